@@ -1,0 +1,3 @@
+//! Elementary and special functions of balls.
+
+pub mod elementary;

@@ -1,0 +1,47 @@
+//! Deliberate faults, for showing that the tests can fail.
+//!
+//! Without the cargo feature `spoil` every question is answered `false` at compile time and no
+//! trace of a fault is left in the program. With the feature, one fault at a time can be switched
+//! on by a test; `tests/spoil.rs` shows for each one that the containment checks notice it.
+
+/// A bound, a sign or a rounding that can be broken on purpose.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[repr(u8)]
+pub enum Fault {
+    /// Radii are rounded down instead of up.
+    RadiusRoundedDown = 1,
+    /// The rounding error of a product of balls is forgotten.
+    ProductRoundingForgotten = 2,
+    /// The discretisation error of the trapezoid rule is left out.
+    TrapezoidErrorForgotten = 3,
+    /// The far field of the spectral route is added with the wrong sign.
+    FarFieldSign = 4,
+    /// The cut-off tail of the kernel route is left out.
+    KernelTailForgotten = 5,
+    /// A printed lower bound is rounded up.
+    LowerBoundRoundedUp = 6,
+    /// The power series of the K functions are cut too early, without their tail bound.
+    BesselSeriesCut = 7,
+}
+
+#[cfg(feature = "spoil")]
+static ACTIVE: std::sync::atomic::AtomicU8 = std::sync::atomic::AtomicU8::new(0);
+
+/// Switches one fault on, or all off.
+#[cfg(feature = "spoil")]
+pub fn activate(fault: Option<Fault>) {
+    ACTIVE.store(fault.map_or(0, |f| f as u8), std::sync::atomic::Ordering::SeqCst);
+}
+
+/// Whether the fault is switched on.
+#[cfg(feature = "spoil")]
+pub(crate) fn is_active(fault: Fault) -> bool {
+    ACTIVE.load(std::sync::atomic::Ordering::Relaxed) == fault as u8
+}
+
+/// Whether the fault is switched on: never, without the feature.
+#[cfg(not(feature = "spoil"))]
+#[inline(always)]
+pub(crate) const fn is_active(_fault: Fault) -> bool {
+    false
+}
