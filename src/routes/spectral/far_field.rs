@@ -1,0 +1,380 @@
+//! The nodes beyond the near ones, summed in closed form (region at the cone, `d = 0`).
+//!
+//! For `x > x_K` (`K` the last near node) put `z = e^-x`; the weight is
+//! `w = v(z)/4 - error`, `v(z) = (1 - z^2)/(1 + z^2) exp(-t z) = Sum alpha_i z^i`, with
+//! `|error| <= rho = (exp(-t e^x) + exp(-a e^x))/4` taken at the first far node (both vanishing exponentials
+//! fall with `x`; `2 a cosh x > a e^x`). Replacing `w` by `v/4` on all far nodes changes `S` by at most
+//! `2 rho (1/4) h^2 Sum Sum 1/(cosh + cosh) <= rho pi^2/8 < 1.25 rho`.
+//!
+//! **Coefficients.** `(1 + z^2) v = (1 - z^2) e^(-tz)` gives `alpha_i = e_i - e_(i-2) - alpha_(i-2)`,
+//! `e_i = (-t)^i/i!`. By Cauchy's estimate with the majorant `V(z) = (1 + z^2)/(1 - z^2) e^(tz)`:
+//! `|alpha_i| Z^i <= V(lambda Z) lambda^-i`.
+//!
+//! **Far-far block.** `1/(cosh x + cosh y) = 2 z z'/((z + z')(1 + z z'))`. With nodes `z = Z q^n`, `q = e^-h`, `n >= 0`:
+//!
+//! ```text
+//! Sum Sum v v'/(cosh + cosh) = Sum_ij f_ij Z^(i+j-1) (s_i + s_j - 1/2)/(1 - q^(i+j-1)),   i, j >= 1,
+//! f_ij = 2 alpha_(i-1) alpha_(j-1) - f_(i-1)(j-1),     s_i = Sum_{r>=0} q^(ir)/(1 + q^r),
+//! s_(i+1) = 1/(1 - q^i) - s_i,   s_1 = 1/2 + L(q) - 2 L(q^2),   L(x) = Sum_{n>=1} x^(n^2) (1 + x^n)/(1 - x^n),
+//! ```
+//!
+//! from `Sum_{n,m} q^(in+jm)/(q^n + q^m)`, split at `n = m` and `n - m = ± r`; the Lambert series `L` in Clausen's
+//! form, and `Sum q^r/(1+q^r) = L(q) - 2 L(q^2)` from `y/(1+y) = y/(1-y) - 2 y^2/(1-y^2)`. Terms with
+//! `i + j > J` are at most `(2 s_1/(Z (1-q))) lambda^-(J+1) 2 (lambda Z)^2 V(lambda Z)^2/(1 - (lambda Z)^2)`.
+//!
+//! **Cross block.** For near `x = x_k <= x_K` and nodes `y > x_last`: `1/(cosh x + cosh y) =
+//! Sum_{n>=1} (-1)^(n-1) e^(-ny) (e^(nx) - e^(-nx))/sinh x`, so both orders together give
+//! `Sum_k r_k (p(e^(x_k)) - p(e^(-x_k)))`, `p(u) = Sum_n (-1)^(n-1) mu_n u^n`,
+//! `mu_n = Sum_i alpha_i Z2^(i+n)/(1 - q^(i+n))`, `Z2 = e^(-x_last - h)`. With `g = e^(x_K) Z2`: the terms beyond `N` are
+//! at most `(N+1) g^(N+1) / (4 (1-g)^2 (1-q)^2)`; cutting `mu_n` at `i <= J` errs by at most
+//! `Z2^n V(lambda Z2) lambda^-(J+1)/((1 - 1/lambda)(1-q))`, and `r_k e^(n x_k) Z2^n <= g^n/4` sums over `k` and `n`
+//! to at most `count * g/(1-g)/2` times the rest.
+
+use super::nodes::Nodes;
+use super::plan::{Plan, far_series_length, to_f64};
+use super::{BOUND_BITS, Setting, exp_minus_upper};
+use crate::arithmetic::{Magnitude, Real};
+use crate::functions::elementary::exp;
+use crate::routes::{Effort, RouteFailure};
+use rug::Integer;
+
+/// What the far nodes add.
+pub(super) struct FarField {
+    /// To the double sum, without `h^2`.
+    pub sum: Real,
+    /// Error of `S` from replacing the weights.
+    pub replacement_error: Magnitude,
+}
+
+/// Sums the far-far and the cross block.
+pub(super) fn sum(setting: &Setting, nodes: &Nodes, plan: &Plan, effort: &Effort) -> Result<FarField, RouteFailure> {
+    let geometry = Geometry::new(setting, nodes, plan);
+    let coefficients = geometry.coefficients(setting, plan, &geometry.start);
+    let far = far_far(&geometry, &coefficients, plan, effort)?;
+    let cross = cross(setting, &geometry, nodes, plan, effort)?;
+    let mut total = far.shift(-4).add(&cross, plan.bits);
+    if crate::spoil::is_active(crate::spoil::Fault::FarFieldSign) {
+        total = total.neg();
+    }
+    Ok(FarField { sum: total, replacement_error: geometry.replacement_error(setting) })
+}
+
+struct Geometry {
+    /// `Z`, at the first far node.
+    start: Real,
+    /// `Z2`, at the first node beyond the last one of the near sum.
+    outer: Real,
+    /// `e^(x_K)`.
+    edge: Real,
+    /// `1/(1 - q^i)` for `i = 1, 2, ...` at index `i`; index 0 unused.
+    geometric: Vec<Real>,
+    /// Chosen ratio of the Cauchy estimates.
+    lambda: Real,
+    outer_lambda: Real,
+    outer_terms: usize,
+}
+
+impl Geometry {
+    fn new(setting: &Setting, nodes: &Nodes, plan: &Plan) -> Geometry {
+        let bits = plan.bits;
+        let step = Real::from_rational(&plan.step, bits);
+        let at = |index: usize| exp(&step.mul_i64(-(index as i64), bits), bits);
+        let h = to_f64(&plan.step);
+        let goal = f64::from(plan.scale) * std::f64::consts::LN_2;
+        let time = setting.time.to_f64();
+        let (_, lambda) = far_series_length(time, (plan.near as f64 + 1.0) * h, goal);
+        let (outer_terms, outer_lambda) = far_series_length(time, (plan.last as f64 + 1.0) * h, goal);
+        let one = Real::from_i64(1);
+        let most = plan.series_terms.max(plan.cross_terms + outer_terms) + 2;
+        let mut geometric = vec![Real::whole_line()];
+        let mut power = nodes.decay.clone();
+        for _ in 1..=most {
+            geometric.push(one.div(&one.sub(&power, bits), bits));
+            power = power.mul(&nodes.decay, bits);
+        }
+        let float = |v: f64| Real::from_float(rug::Float::with_val(53, v));
+        Geometry {
+            start: at(plan.near + 1),
+            outer: at(plan.last + 1),
+            edge: exp(&step.mul_i64(plan.near as i64, bits), bits),
+            geometric,
+            lambda: float(lambda),
+            outer_lambda: float(outer_lambda),
+            outer_terms,
+        }
+    }
+
+    /// `alpha_i Z^i` for `i = 0..`, by the recurrence with all terms scaled.
+    fn coefficients(&self, setting: &Setting, plan: &Plan, start: &Real) -> Vec<Real> {
+        let bits = plan.bits;
+        let square = start.square(bits);
+        let ratio = setting.time.mul(start, bits).neg();
+        let count = plan.series_terms.max(self.outer_terms) + 1;
+        let mut exponential = vec![Real::from_i64(1)];
+        let mut alpha: Vec<Real> = Vec::with_capacity(count);
+        for i in 0..count {
+            let mut next = exponential[i].clone();
+            if i >= 2 {
+                let back = exponential[i - 2].add(&alpha[i - 2], bits).mul(&square, bits);
+                next = next.sub(&back, bits);
+            }
+            alpha.push(next);
+            let term = exponential[i].mul(&ratio, bits).div_u64(i as u64 + 1, bits);
+            exponential.push(term);
+        }
+        alpha
+    }
+
+    /// `V(lambda Z)` bounded above, infinite unless `lambda Z < 1`.
+    fn majorant(&self, setting: &Setting, radius: &Real) -> Magnitude {
+        let bits = BOUND_BITS;
+        let one = Real::from_i64(1);
+        let square = radius.square(bits);
+        let below = one.sub(&square, bits);
+        if !below.certainly_positive() {
+            return Magnitude::INFINITY;
+        }
+        let growth = exp(&setting.time.mul(radius, bits), bits);
+        one.add(&square, bits).div(&below, bits).mul(&growth, bits).abs_upper()
+    }
+
+    fn replacement_error(&self, setting: &Setting) -> Magnitude {
+        let at = |rate: &Real| exp_minus_upper(&rate.div(&self.start, BOUND_BITS));
+        let rho = at(&setting.time).add(at(&setting.half_width)).shift(-2);
+        rho.mul(Magnitude::from_u64(5)).shift(-2)
+    }
+}
+
+/// `lambda^-power` bounded above.
+fn inverse_power(lambda: &Real, power: usize) -> Magnitude {
+    Magnitude::ONE.div(lambda.abs_lower()).pow(power as u64)
+}
+
+/// `Sum Sum v v'/(cosh + cosh)` over the far nodes.
+fn far_far(
+    geometry: &Geometry,
+    alpha: &[Real],
+    plan: &Plan,
+    effort: &Effort,
+) -> Result<Real, RouteFailure> {
+    let bits = plan.bits;
+    let most = plan.series_terms;
+    let shares = shares(geometry, most, plan);
+    let half = Real::from_i64(1).shift(-1);
+    let mut diagonals = vec![Real::zero(); most + 1];
+    let twice_start = geometry.start.shift(1);
+    let minus_square = geometry.start.square(bits).neg();
+    // G_ij = f_ij Z^(i+j-1), following each diagonal i - j = const.
+    for offset in 0..most - 1 {
+        effort.check()?;
+        let mut g = Real::zero();
+        for i in 1.. {
+            let j = i + offset;
+            if i + j > most {
+                break;
+            }
+            let fresh = alpha[i - 1].mul(&alpha[j - 1], bits).mul(&twice_start, bits);
+            g = fresh.add(&g.mul(&minus_square, bits), bits);
+            let weight = shares[i].add(&shares[j], bits).sub(&half, bits);
+            let term = g.mul(&weight, bits);
+            let term = if offset == 0 { term } else { term.shift(1) };
+            diagonals[i + j] = diagonals[i + j].add(&term, bits);
+        }
+    }
+    let mut total = Real::zero();
+    for (s, diagonal) in diagonals.iter().enumerate().skip(2) {
+        total = total.add(&diagonal.mul(&geometry.geometric[s - 1], bits), bits);
+    }
+    Ok(total)
+}
+
+/// `s_i` for `i = 1..=most` at index `i`.
+fn shares(geometry: &Geometry, most: usize, plan: &Plan) -> Vec<Real> {
+    let bits = plan.bits;
+    let mut list = vec![Real::whole_line(), first_share(geometry, plan)];
+    for i in 1..most {
+        list.push(geometry.geometric[i].sub(&list[i], bits));
+    }
+    list
+}
+
+/// `s_1 = 1/2 + L(q) - 2 L(q^2)`.
+fn first_share(geometry: &Geometry, plan: &Plan) -> Real {
+    let bits = plan.bits;
+    let one = Real::from_i64(1);
+    let q = one.sub(&one.div(&geometry.geometric[1], bits), bits);
+    let plain = lambert(&q, plan);
+    let squared = lambert(&q.square(bits), plan);
+    plain.sub(&squared.shift(1), bits).add(&one.shift(-1), bits)
+}
+
+/// `L(x) = Sum_{n>=1} x^(n^2) (1 + x^n)/(1 - x^n)` for `0 < x < 1`.
+///
+/// The terms beyond `N` sum to at most `2 x^((N+1)^2)/(1 - x)^2`: each is at most `2 x^(n^2)/(1 - x)`, and
+/// `Sum_{n>N} x^(n^2) <= x^((N+1)^2)/(1 - x)`.
+fn lambert(x: &Real, plan: &Plan) -> Real {
+    let bits = plan.bits;
+    let one = Real::from_i64(1);
+    let square = x.square(bits);
+    let goal = Magnitude::power_of_two(-i64::from(plan.bits));
+    let mut total = Real::zero();
+    // power = x^n, gaussian = x^(n^2), odd = x^(2n+1)
+    let (mut power, mut gaussian, mut odd) = (x.clone(), x.clone(), x.mul(&square, bits));
+    loop {
+        let ratio = one.add(&power, bits).div(&one.sub(&power, bits), bits);
+        total = total.add(&gaussian.mul(&ratio, bits), bits);
+        gaussian = gaussian.mul(&odd, bits);
+        odd = odd.mul(&square, bits);
+        power = power.mul(x, bits);
+        if gaussian.abs_upper().cmp_value(goal).is_lt() || !gaussian.is_bounded() {
+            break;
+        }
+    }
+    let below = one.sub(x, bits).abs_lower();
+    total.widen(gaussian.abs_upper().shift(1).div(below.mul_down(below)))
+}
+
+impl Geometry {
+    /// Tail of the far-far series beyond `i + j = series_terms`.
+    fn far_tail(&self, setting: &Setting, plan: &Plan) -> Magnitude {
+        let radius = self.lambda.mul(&self.start, BOUND_BITS);
+        let growth = self.majorant(setting, &radius);
+        let square = radius.square(BOUND_BITS);
+        let below = Real::from_i64(1).sub(&square, BOUND_BITS).abs_lower();
+        let series = square.abs_upper().shift(1).mul(growth).mul(growth).div(below);
+        let first = self.geometric[1].abs_upper();
+        // s_1 <= Sum q^r = 1/(1 - q).
+        let weight = first.mul(first).shift(1).div(self.start.abs_lower());
+        weight.mul(series).mul(inverse_power(&self.lambda, plan.series_terms + 1))
+    }
+}
+
+/// The cross block, by Horner's rule in fixed point with arguments at most one.
+///
+/// `p` is written in `u e^(-x_K)`, so its coefficients are `mu_n e^(n x_K)` and its arguments
+/// `e^(±x_k - x_K) <= 1`. With values bounded by `size = Sum |c_n|`, one Horner step errs by at most
+/// `2 size` units through its argument (off by less than two units), `2^-8` by cutting it, one by rounding down;
+/// as arguments do not exceed one, errors only add up, together with those of the coefficients.
+fn cross(
+    setting: &Setting,
+    geometry: &Geometry,
+    nodes: &Nodes,
+    plan: &Plan,
+    effort: &Effort,
+) -> Result<Real, RouteFailure> {
+    let (coefficients, errors) = cross_coefficients(setting, geometry, plan)?;
+    let scale = plan.scale;
+    let arguments = arguments(geometry, nodes, plan)?;
+    let mut total = Integer::new();
+    for (index, (ratio, pair)) in nodes.ratios.iter().zip(&arguments).enumerate() {
+        if index % 16 == 0 {
+            effort.check()?;
+        }
+        let difference = horner(&coefficients, &pair.0, scale) - horner(&coefficients, &pair.1, scale);
+        total += ratio * difference;
+    }
+    let count = arguments.len() as u64;
+    let size: Magnitude = coefficients.iter().fold(Magnitude::ZERO, |m, c| {
+        m.add(Magnitude::from_float(&rug::Float::with_val_round(64, c, rug::float::Round::AwayZero).0))
+    });
+    let size = size.shift(-i64::from(scale));
+    let each = Magnitude::from_u64(4).add(size.shift(1));
+    let steps = Magnitude::from_u64(plan.cross_terms as u64 + 1).mul(each);
+    // |p| <= size, so an error e of the ratios gives 2 e size; Horner's error is weighted by r <= 1/4.
+    let from_ratios = nodes.error_units.mul(size).shift(1);
+    let units = steps.add(errors).add(from_ratios).mul(Magnitude::from_u64(count));
+    let value = Real::from_scaled(&total, -2 * i64::from(scale)).round(plan.bits);
+    let tails = geometry.cross_tail(setting, plan, count).add(geometry.far_tail(setting, plan).shift(-4));
+    Ok(value.widen(units.shift(-i64::from(scale))).widen(tails))
+}
+
+/// `(-1)^(n-1) mu_n e^(n x_K)` for `n = 1..=cross_terms` in fixed point, and the sum of their errors.
+fn cross_coefficients(
+    setting: &Setting,
+    geometry: &Geometry,
+    plan: &Plan,
+) -> Result<(Vec<Integer>, Magnitude), RouteFailure> {
+    let bits = plan.bits;
+    let alpha = geometry.coefficients(setting, plan, &geometry.outer);
+    let gap = geometry.outer.mul(&geometry.edge, bits);
+    let mut power = gap.clone();
+    let mut list = Vec::with_capacity(plan.cross_terms);
+    let mut errors = Magnitude::ZERO;
+    for n in 1..=plan.cross_terms {
+        let mut moment = Real::zero();
+        for (i, coefficient) in alpha.iter().enumerate().take(geometry.outer_terms + 1) {
+            moment = moment.add(&coefficient.mul(&geometry.geometric[i + n], bits), bits);
+        }
+        let value = moment.mul(&power, bits);
+        let signed = if n % 2 == 1 { value } else { value.neg() };
+        let (fixed, error) = signed.to_fixed(i64::from(plan.scale)).ok_or(RouteFailure::OutOfReach {
+            reason: "a moment of the far field has no finite enclosure".to_owned(),
+        })?;
+        errors = errors.add(error);
+        list.push(fixed);
+        power = power.mul(&gap, bits);
+    }
+    Ok((list, errors))
+}
+
+/// `(e^(x_k - x_K), e^(-x_k - x_K))` in fixed point for the near nodes, each off by at most one unit.
+fn arguments(geometry: &Geometry, nodes: &Nodes, plan: &Plan) -> Result<Vec<(Integer, Integer)>, RouteFailure> {
+    let bits = plan.bits;
+    let one = Real::from_i64(1);
+    let lowest = exp(&Real::from_rational(&plan.step, bits).mul_i64(-(plan.near as i64 - plan.first as i64), bits), bits);
+    let growth = one.div(&nodes.decay, bits);
+    let edge = one.div(&geometry.edge, bits).square(bits);
+    let mut up = lowest.clone();
+    let mut list = Vec::with_capacity(plan.near + 1 - plan.first);
+    for _ in plan.first..=plan.near {
+        let down = edge.div(&up, bits);
+        match (up.to_fixed(i64::from(plan.scale)), down.to_fixed(i64::from(plan.scale))) {
+            (Some((u, _)), Some((d, _))) => list.push((u, d)),
+            _ => {
+                let reason = "a node of the spectral sum has no finite enclosure".to_owned();
+                return Err(RouteFailure::OutOfReach { reason });
+            }
+        }
+        up = up.mul(&growth, bits);
+    }
+    Ok(list)
+}
+
+/// `Sum_n c_n u^n`; the argument is cut to the bits that the running value can use.
+fn horner(coefficients: &[Integer], argument: &Integer, scale: u32) -> Integer {
+    let mut value = Integer::new();
+    for coefficient in coefficients.iter().rev() {
+        value += coefficient;
+        let used = value.significant_bits() + 8;
+        if used < scale {
+            let cut = scale - used;
+            value *= Integer::from(argument >> cut);
+            value >>= used;
+        } else {
+            value *= argument;
+            value >>= scale;
+        }
+    }
+    value
+}
+
+impl Geometry {
+    /// Cut-off errors of the cross block.
+    fn cross_tail(&self, setting: &Setting, plan: &Plan, count: u64) -> Magnitude {
+        let bits = BOUND_BITS;
+        let one = Real::from_i64(1);
+        let gap = self.outer.mul(&self.edge, bits);
+        let below = one.sub(&gap, bits).abs_lower();
+        let first = self.geometric[1].abs_upper();
+        let ratio = gap.abs_upper();
+        let terms = plan.cross_terms as u64;
+        let series = ratio.pow(terms + 1).mul(Magnitude::from_u64(terms + 1)).div(below.mul_down(below));
+        let series = series.mul(first).mul(first).shift(-2);
+        let radius = self.outer_lambda.mul(&self.outer, bits);
+        let growth = self.majorant(setting, &radius);
+        let shrink = one.sub(&one.div(&self.outer_lambda, bits), bits).abs_lower();
+        let moments = growth.mul(inverse_power(&self.outer_lambda, self.outer_terms + 1)).mul(first).div(shrink);
+        let spread = ratio.div(below).mul(Magnitude::from_u64(count)).shift(-1);
+        series.add(moments.mul(spread))
+    }
+}

@@ -1,0 +1,187 @@
+//! The double sum over the near nodes, in fixed point.
+//!
+//! With `T_m = tanh(m h/2)` and `1/(cosh x + cosh y) = (T((x+y)/h) + T((x-y)/h)) / (2 sinh x)` the sum over
+//! all pairs with at least one index up to `near` is
+//!
+//! ```text
+//! Sum_k r_k [ w_k T_2k (if k <= near) + 2 Sum_{l < k, l <= near} w_l (T_{k+l} + T_{k-l}) ],   r_k = w_k/(2 sinh kh),
+//! ```
+//!
+//! every term positive. For many nodes the full sum over the near block is done as one product of
+//! two big integers (the coefficients of polynomials, packed side by side):
+//! `Sum_k r_k Sum_{|l| >= first} w_|l| T_{k-l} = Sum_m T_m (r * w)_m`.
+//!
+//! **Rounding.** Let all `w`, `r` be off by at most `e` units of `u = 2^-scale` and all `T` by at most
+//! two units, `w, r <= 1/4`, `T <= 1`. Integer products and sums are exact, so with `n` nodes the bracket, a sum
+//! of at most `4n + 1` products, is off by at most `(4n + 1)(e + 2)(1 + 2u) u`, and the whole by at most
+//! `n (4n + 1) (2e + 3) u` (as `r <= 1/4` and the bracket is at most `(4n+1)/4`). The packed product sums `2n^2`
+//! triple products, each off by at most `(2e + 2) u`, which is less.
+
+use super::nodes::Nodes;
+use super::plan::{PRODUCT_FROM, Plan};
+use crate::arithmetic::{Magnitude, Real};
+use crate::routes::{Effort, RouteFailure};
+use rug::Integer;
+use rug::integer::Order;
+
+/// The near sum (without `h^2`) as a ball.
+pub(super) fn sum(nodes: &Nodes, plan: &Plan, effort: &Effort) -> Result<Real, RouteFailure> {
+    let table = Tangents::new(nodes, plan, effort)?;
+    let total = if plan.near.saturating_sub(plan.first) >= PRODUCT_FROM {
+        by_product(nodes, plan, &table, effort)?
+    } else {
+        by_pairs(nodes, plan, &table, effort)?
+    };
+    let count = nodes.len() as u64;
+    let units = Magnitude::from_u64(count).mul(Magnitude::from_u64(4 * count + 1));
+    let each = nodes.error_units.shift(1).add(Magnitude::from_u64(3));
+    let scale = i64::from(plan.scale);
+    let value = Real::from_scaled(&total, -3 * scale).round(plan.bits);
+    Ok(value.widen(units.mul(each).shift(-scale)))
+}
+
+/// `floor(T_m 2^scale)` for the small and for the large indices that occur.
+struct Tangents {
+    small: Vec<Integer>,
+    large: Vec<Integer>,
+    offset: usize,
+}
+
+impl Tangents {
+    fn new(nodes: &Nodes, plan: &Plan, effort: &Effort) -> Result<Tangents, RouteFailure> {
+        let span = plan.last - plan.first;
+        let offset = 2 * plan.first;
+        let top = plan.last + plan.near;
+        if offset <= span + 1 {
+            // One table serves both ranges.
+            return Ok(Tangents { small: run(nodes, plan, 0, top, effort)?, large: Vec::new(), offset: 0 });
+        }
+        let small = run(nodes, plan, 0, span, effort)?;
+        Ok(Tangents { small, large: run(nodes, plan, offset, top, effort)?, offset })
+    }
+
+    fn at(&self, index: usize) -> &Integer {
+        if self.large.is_empty() || index < self.small.len() {
+            &self.small[index]
+        } else {
+            &self.large[index - self.offset]
+        }
+    }
+}
+
+/// `T_m` for `m` in `from..=to`: `(1 - q^m)/(1 + q^m)` with `q^m` by repeated fixed-point products.
+///
+/// `q^m` is kept with 32 extra bits: its error after `n` steps is at most `n + 1` of the small units (each
+/// step adds at most one and shrinks what it has), so `T_m`, with derivative at most two in `q^m` and one
+/// rounding down, is off by less than two units of `2^-scale` for fewer than `2^30` steps.
+fn run(nodes: &Nodes, plan: &Plan, from: usize, to: usize, effort: &Effort) -> Result<Vec<Integer>, RouteFailure> {
+    let fine = plan.scale + 32;
+    let one = Integer::from(1) << fine;
+    let bits = plan.bits + 64;
+    let step = Real::from_rational(&plan.step, bits);
+    let start = crate::functions::elementary::exp(&step.mul_i64(-(from as i64), bits), bits);
+    let decay = crate::functions::elementary::exp(&step.neg(), bits);
+    let broken = || RouteFailure::OutOfReach { reason: "the step of the spectral sum is not finite".to_owned() };
+    let (mut power, _) = start.to_fixed(i64::from(fine)).ok_or_else(broken)?;
+    let (factor, _) = decay.to_fixed(i64::from(fine)).ok_or_else(broken)?;
+    let mut table = Vec::with_capacity(to - from + 1);
+    let _ = nodes;
+    for index in from..=to {
+        if index % 64 == 0 {
+            effort.check()?;
+        }
+        let numerator = Integer::from(&one - &power) << plan.scale;
+        table.push(numerator / Integer::from(&one + &power));
+        power *= &factor;
+        power >>= fine;
+    }
+    Ok(table)
+}
+
+/// The sum pair by pair.
+fn by_pairs(nodes: &Nodes, plan: &Plan, table: &Tangents, effort: &Effort) -> Result<Integer, RouteFailure> {
+    let mut total = Integer::new();
+    let mut bracket = Integer::new();
+    let mut both = Integer::new();
+    for k in plan.first..=plan.last {
+        effort.check()?;
+        bracket.assign_zero();
+        for l in plan.first..k.min(plan.near + 1) {
+            both.clone_from(table.at(k + l));
+            both += table.at(k - l);
+            bracket += &both * &nodes.weights[l - plan.first];
+        }
+        bracket <<= 1;
+        if k <= plan.near {
+            bracket += &nodes.weights[k - plan.first] * table.at(2 * k);
+        }
+        total += &bracket * &nodes.ratios[k - plan.first];
+    }
+    Ok(total)
+}
+
+trait AssignZero {
+    fn assign_zero(&mut self);
+}
+
+impl AssignZero for Integer {
+    fn assign_zero(&mut self) {
+        rug::Assign::assign(self, 0);
+    }
+}
+
+/// The same sum with the near block as one packed product.
+fn by_product(nodes: &Nodes, plan: &Plan, table: &Tangents, effort: &Effort) -> Result<Integer, RouteFailure> {
+    let near = plan.near - plan.first + 1;
+    // Each coefficient of the product is below near * 2^(2 scale - 4), so 64-bit aligned slots never overlap.
+    let slot = (2 * plan.scale as usize + 64).div_ceil(64);
+    let ratios = pack(nodes.ratios[..near].iter(), slot);
+    effort.check()?;
+    // Index of l: from -near_index to +near_index, first the mirrored part, then a gap, then the weights.
+    let gap = 2 * plan.first - 1;
+    let mirrored = nodes.weights[..near].iter().rev();
+    let zero = Integer::new();
+    let zeros = std::iter::repeat_n(&zero, gap);
+    let weights = pack(mirrored.chain(zeros).chain(nodes.weights[..near].iter()), slot);
+    let product = unpack(&(ratios * weights), slot);
+    effort.check()?;
+    // Coefficient j belongs to m = k + l with k = first + i, l = j' - near_last.
+    let base = plan.first as i64 - plan.near as i64;
+    let mut total = Integer::new();
+    for (index, coefficient) in product.iter().enumerate() {
+        let m = base + index as i64;
+        let tangent = table.at(m.unsigned_abs() as usize);
+        if m < 0 { total -= coefficient * tangent } else { total += coefficient * tangent }
+    }
+    total += outer_rows(nodes, plan, table, effort)?;
+    Ok(total)
+}
+
+/// Rows `k > near` of the pair sum.
+fn outer_rows(nodes: &Nodes, plan: &Plan, table: &Tangents, effort: &Effort) -> Result<Integer, RouteFailure> {
+    let mut total = Integer::new();
+    for k in plan.near + 1..=plan.last {
+        effort.check()?;
+        let mut bracket = Integer::new();
+        for l in plan.first..=plan.near {
+            let both = Integer::from(table.at(k + l) + table.at(k - l));
+            bracket += both * &nodes.weights[l - plan.first];
+        }
+        total += (bracket << 1u32) * &nodes.ratios[k - plan.first];
+    }
+    Ok(total)
+}
+
+fn pack<'a>(values: impl Iterator<Item = &'a Integer>, slot: usize) -> Integer {
+    let mut limbs: Vec<u64> = Vec::new();
+    for value in values {
+        let end = limbs.len() + slot;
+        limbs.extend(value.to_digits::<u64>(Order::Lsf));
+        limbs.resize(end, 0);
+    }
+    Integer::from_digits(&limbs, Order::Lsf)
+}
+
+fn unpack(value: &Integer, slot: usize) -> Vec<Integer> {
+    value.to_digits::<u64>(Order::Lsf).chunks(slot).map(|part| Integer::from_digits(part, Order::Lsf)).collect()
+}
