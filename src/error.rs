@@ -14,6 +14,13 @@ pub enum Error {
         /// What would be right.
         wanted: String,
     },
+    /// A field of the request is needed and was not given.
+    Missing {
+        /// The field, as the user writes it.
+        field: String,
+        /// What would be right.
+        wanted: String,
+    },
     /// A file could not be written or read.
     File {
         /// The path as given.
@@ -36,18 +43,36 @@ pub enum Error {
 }
 
 impl Error {
-    /// A refusal of one field.
+    /// A refusal of one field; what was given is shortened and made printable on one line.
     pub fn bad_input(field: &str, was: impl fmt::Display, wanted: &str) -> Error {
-        Error::BadInput { field: field.to_owned(), was: was.to_string(), wanted: wanted.to_owned() }
+        Error::BadInput { field: field.to_owned(), was: printable(&was.to_string()), wanted: wanted.to_owned() }
+    }
+
+    /// A file that cannot be used; `action` completes "cannot ...".
+    pub fn file(action: &str, path: impl fmt::Display, reason: impl fmt::Display) -> Error {
+        Error::File { path: printable(&path.to_string()), action: action.to_owned(), reason: reason.to_string() }
     }
 
     /// The process exit code: 2 for bad input and files, 4 for internal faults.
     pub fn exit_code(&self) -> u8 {
         match self {
-            Error::BadInput { .. } | Error::File { .. } => EXIT_BAD_INPUT,
+            Error::BadInput { .. } | Error::Missing { .. } | Error::File { .. } => EXIT_BAD_INPUT,
             Error::RoutesDisagree { .. } | Error::Internal { .. } => EXIT_INTERNAL_FAULT,
         }
     }
+}
+
+/// The text on one line without control characters, its end cut off if it is very long.
+fn printable(text: &str) -> String {
+    const SHOWN: usize = 60;
+    let mut shown = String::new();
+    for character in text.chars().take(SHOWN) {
+        if character.is_control() { shown.extend(character.escape_default()) } else { shown.push(character) }
+    }
+    if text.chars().count() > SHOWN {
+        shown.push('…');
+    }
+    shown
 }
 
 /// The answer is certified to the digits asked.
@@ -63,6 +88,7 @@ impl fmt::Display for Error {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Error::BadInput { field, was, wanted } => write!(f, "{field}: \"{was}\" cannot be used; {wanted}"),
+            Error::Missing { field, wanted } => write!(f, "{field} is missing; {wanted}"),
             Error::File { path, action, reason } => write!(f, "cannot {action} \"{path}\": {reason}"),
             Error::RoutesDisagree { intervals } => {
                 write!(f, "internal fault: independent routes exclude each other, no answer is given")?;

@@ -1,3 +1,5 @@
 //! Elementary and special functions of balls.
 
+pub mod bessel_k;
+pub mod complex_elementary;
 pub mod elementary;

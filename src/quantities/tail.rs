@@ -6,7 +6,7 @@
 //! monotonicity lemmas in [`super::tail_range`].
 
 use super::tail_range;
-use crate::arithmetic::{Bits, ExactInput, Interval, decimal};
+use crate::arithmetic::{Bits, ExactInput, Interval, decimal, rounding};
 use crate::error::Error;
 use crate::packets::BoxPacket;
 use crate::routes::{Effort, Route, RouteFailure, RouteOutcome, TailProblem, kernel, spectral};
@@ -49,6 +49,17 @@ pub enum RouteChoice {
     Both,
 }
 
+impl RouteChoice {
+    /// The name on the command line and in certificates.
+    pub fn name(self) -> &'static str {
+        match self {
+            RouteChoice::Kernel => "kernel",
+            RouteChoice::Spectral => "spectral",
+            RouteChoice::Both => "both",
+        }
+    }
+}
+
 /// A question for a tail probability.
 ///
 /// ```
@@ -88,6 +99,16 @@ pub enum Status {
     Certified,
     /// The interval is proven, but wider than asked.
     FewerDigits,
+}
+
+impl Status {
+    /// The name in reports and certificates.
+    pub fn name(self) -> &'static str {
+        match self {
+            Status::Certified => "certified",
+            Status::FewerDigits => "fewer digits",
+        }
+    }
 }
 
 /// What one route contributed.
@@ -170,6 +191,7 @@ impl TailRequest {
         let edge = Rational::from(self.packet.half_width().upper() + latest);
         match &self.beyond {
             Some(region) if *region.lower() < edge => {
+                let edge = readable(&edge);
                 let wanted = format!("the light cone ends at half-width + |time| = {edge}; give that or more");
                 Err(Error::bad_input("beyond", region.text(), &wanted))
             }
@@ -205,6 +227,14 @@ impl TailRequest {
     pub(super) fn effort(&self) -> Effort {
         Effort { max_bits: self.max_bits, deadline: self.time_limit.map(|limit| Instant::now() + limit) }
     }
+}
+
+/// An exact number for a sentence: as a fraction if that is short, else rounded up.
+fn readable(value: &Rational) -> String {
+    if value.numer().significant_bits().max(value.denom().significant_bits()) <= 64 {
+        return value.to_string();
+    }
+    decimal::upper_decimal(&rounding::up(128, value), 17)
 }
 
 /// Exact half of an interval.

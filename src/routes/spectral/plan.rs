@@ -3,8 +3,9 @@
 //! Nothing here decides containment: a bad choice makes the interval wide, never wrong, because all
 //! error bounds are evaluated afterwards for whatever was chosen.
 
+use crate::routes::estimate::{bisect, dyadic, log_probability, proper_distance};
 use crate::routes::{RouteFailure, TailProblem};
-use rug::{Float, Rational};
+use rug::Rational;
 use std::f64::consts::{FRAC_PI_2, LN_2, LN_10, PI};
 
 /// More nodes than this are refused.
@@ -41,11 +42,6 @@ pub(super) fn to_f64(value: &Rational) -> f64 {
     value.to_f64()
 }
 
-/// The double as an exact rational with few bits.
-fn dyadic(value: f64, bits: u32) -> Rational {
-    Float::with_val_round(bits, value, rug::float::Round::Down).0.to_rational().unwrap_or_default()
-}
-
 impl Plan {
     pub(super) fn new(problem: &TailProblem, digits: u32) -> Result<Plan, RouteFailure> {
         let (a, t, d) = (to_f64(&problem.half_width), to_f64(&problem.time), to_f64(&problem.distance));
@@ -53,7 +49,8 @@ impl Plan {
         if !sane(a) || !sane(t) || !(d == 0.0 || sane(d)) || (problem.distance != 0) != (d != 0.0) {
             return Err(out_of_reach("the ratios of the inputs are outside 1e-290 to 1e290"));
         }
-        let size = estimate_log_integral(a, t, d);
+        // S exp(2E) = P exp(2E) pi^2 a / 4.
+        let size = log_probability(a, t, d) + 2.0 * proper_distance(t, d) + (PI * PI * a / 4.0).ln();
         let goal = f64::from(digits) * LN_10 - size.min(0.0) + 5.0;
         let (step, strip) = choose_step(a, proper_distance(t, d), goal);
         let mut plan = if d == 0.0 { at_cone(a, t, goal, step) } else { beyond(t, d, goal, step)? };
@@ -72,10 +69,6 @@ impl Plan {
 
 fn out_of_reach(reason: &str) -> RouteFailure {
     RouteFailure::OutOfReach { reason: reason.to_owned() }
-}
-
-fn proper_distance(t: f64, d: f64) -> f64 {
-    d.sqrt() * (d + 2.0 * t).sqrt()
 }
 
 /// The largest step for which Theorem C reaches `exp(-goal)`, with the strip that allows it.
@@ -167,47 +160,4 @@ fn beyond(t: f64, d: f64, goal: f64, step: Rational) -> Result<Plan, RouteFailur
         bits: 0,
         scale: 0,
     })
-}
-
-/// The point where a predicate becomes true on `[low, high]`.
-fn bisect(mut low: f64, mut high: f64, holds: impl Fn(f64) -> bool) -> f64 {
-    if holds(low) {
-        return low;
-    }
-    for _ in 0..60 {
-        let middle = 0.5 * (low + high);
-        if holds(middle) { high = middle } else { low = middle }
-    }
-    high
-}
-
-/// A rough logarithm of `S exp(2E)`.
-///
-/// At the cone: `1/P` is near `6 + 21 a/t + 2 pi^2 a t` (interpolates the known limits; found by
-/// trial). Beyond it: a coarse trapezoid sum.
-fn estimate_log_integral(a: f64, t: f64, d: f64) -> f64 {
-    if d == 0.0 {
-        let inverse = 6.0 + 21.0 * a / t + 2.0 * PI * PI * a * t;
-        return (PI * PI * a / 4.0).ln() - inverse.ln();
-    }
-    let (fall, rise) = ((t + d / 2.0).sqrt(), (d / 2.0).sqrt());
-    let exponent = |x: f64| (fall * (-x / 2.0).exp() - rise * (x / 2.0).exp()).powi(2);
-    let centre = (fall / rise).ln();
-    let low = bisect(0.0, centre, |x| exponent(x) < 40.0);
-    let high = bisect(centre, centre + 90.0, |x| exponent(x) > 40.0);
-    let count = (((high - low) / 0.25).ceil() as usize).clamp(40, 400);
-    let h = (high - low) / count as f64;
-    let nodes: Vec<(f64, f64)> = (0..count)
-        .map(|k| {
-            let x = low + (k as f64 + 0.5) * h;
-            let growth = -(-2.0 * t * x.sinh()).exp_m1() * -(-2.0 * a * x.cosh()).exp_m1();
-            (x.cosh(), 0.25 * (-exponent(x)).exp() * growth * x.tanh())
-        })
-        .collect();
-    let mut sum = 0.0;
-    for (k, (ck, wk)) in nodes.iter().enumerate() {
-        let inner: f64 = nodes[..k].iter().map(|(cl, wl)| 2.0 * wl / (ck + cl)).sum();
-        sum += wk * (inner + wk / (2.0 * ck));
-    }
-    (sum * h * h).max(1e-300).ln()
 }
