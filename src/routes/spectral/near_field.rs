@@ -78,7 +78,7 @@ fn run(plan: &Plan, from: usize, to: usize, effort: &Effort) -> Result<Vec<Integ
     let fine = plan.scale + 32;
     let one = Integer::from(1) << fine;
     let bits = plan.bits + 64;
-    let step = Real::from_rational(&plan.step, bits);
+    let step = plan.step_ball(bits);
     let start = crate::functions::elementary::exp(&step.mul_i64(-(from as i64), bits), bits);
     let decay = crate::functions::elementary::exp(&step.neg(), bits);
     let broken = || RouteFailure::OutOfReach { reason: "the step of the spectral sum is not finite".to_owned() };
