@@ -34,7 +34,11 @@ fn enclosure(route: &dyn Route, problem: &TailProblem, digits: u32) -> Option<In
         Ok(outcome) => {
             let reached = outcome.interval.has_relative_digits(digits);
             if !reached {
-                println!("{}: {} of {digits} digits for {problem:?}", route.name(), outcome.interval.relative_digits(digits));
+                println!(
+                    "{}: {} of {digits} digits for {problem:?}",
+                    route.name(),
+                    outcome.interval.relative_digits(digits)
+                );
             }
             Some(outcome.interval)
         }

@@ -277,8 +277,7 @@ pub(super) fn run_routes(
         RouteChoice::Spectral => vec![&spectral::SPECTRAL],
         RouteChoice::Both => vec![&kernel::KERNEL, &spectral::SPECTRAL],
     };
-    let reports: Vec<RouteReport> =
-        chosen.into_iter().map(|route| drive(route, problem, digits, effort)).collect();
+    let reports: Vec<RouteReport> = chosen.into_iter().map(|route| drive(route, problem, digits, effort)).collect();
     let mut meeting: Option<Interval> = None;
     for interval in reports.iter().filter_map(|report| report.interval.as_ref()) {
         meeting = Some(match meeting {

@@ -42,7 +42,13 @@ pub(super) fn absolute(input: &ExactInput) -> (Rational, Rational) {
     let high = Rational::from(input.upper().abs_ref());
     let across = *input.lower() <= 0 && *input.upper() >= 0;
     let largest = if low > high { low.clone() } else { high.clone() };
-    let smallest = if across { Rational::new() } else if low < high { low } else { high };
+    let smallest = if across {
+        Rational::new()
+    } else if low < high {
+        low
+    } else {
+        high
+    };
     (smallest, largest)
 }
 
@@ -157,8 +163,7 @@ fn piece(
     const BITS: u32 = 128;
     let digits = request.digits.min(CORNER_DIGITS);
     let at = |mass: &Rational, time: &Rational| {
-        let corner =
-            Corner { half_width: width.0.clone(), mass: mass.clone(), time: time.clone(), beyond: None };
+        let corner = Corner { half_width: width.0.clone(), mass: mass.clone(), time: time.clone(), beyond: None };
         corner.evaluate(request, digits, effort)
     };
     // From the left half-width a1: P(a) lies between P(a1) a1/a and P(a1) a/a1.

@@ -53,7 +53,7 @@
 //! `e (2c + e) Int (1 + |ln y|)^2 = 5 e (2c + e)`.
 
 use super::panel::{PanelSeries, fixed};
-use super::plan::EdgePlan;
+use super::plan::{EdgePlan, best_ratio};
 use super::squares::signed_product;
 use super::{BOUND_BITS, Carry};
 use crate::arithmetic::{Bits, Magnitude, Real};
@@ -146,7 +146,8 @@ impl Ratios {
         let twice_tau = Rational::from(sigma / time);
         let chi = Rational::from(time * sigma) / 2i32;
         let (tau_bound, chi_bound) = (magnitude_of(&twice_tau).shift(-1), magnitude_of(&chi));
-        let (tau, chi): ((Integer, Integer), (Integer, Integer)) = (twice_tau.into_numer_denom(), chi.into_numer_denom());
+        let (tau, chi): ((Integer, Integer), (Integer, Integer)) =
+            (twice_tau.into_numer_denom(), chi.into_numer_denom());
         Ratios {
             common: Integer::from(&tau.1 * &chi.1),
             first_weight: Integer::from(&chi.0 * &tau.1),
@@ -189,12 +190,7 @@ impl Ratios {
 }
 
 /// The series of `2 t F`, with its constant.
-fn logarithmic(
-    problem: &TailProblem,
-    plan: &EdgePlan,
-    carry: &Carry,
-    effort: &Effort,
-) -> Result<Parts, RouteFailure> {
+fn logarithmic(problem: &TailProblem, plan: &EdgePlan, carry: &Carry, effort: &Effort) -> Result<Parts, RouteFailure> {
     let scale = plan.scale;
     let ratios = Ratios::new(&problem.time, &plan.to);
     let one = Coefficient { value: Integer::from(1) << scale, error: Magnitude::ZERO };
@@ -368,19 +364,15 @@ fn log_truncation(t: f64, sigma: f64, radius: f64, terms: f64) -> f64 {
     radius.ln() + bound - terms * (radius / sigma).ln() - terms.ln() - (-(sigma / radius)).ln_1p()
 }
 
-/// A good radius for the truncation bound.
+/// A good radius for the truncation bound, between `sigma` and `2t`.
 fn best_radius(t: f64, sigma: f64, terms: f64) -> f64 {
-    let ratio = 2.0 * t / sigma;
-    let wide = (1..60).map(|i| sigma * ratio.powf(f64::from(i) / 60.0));
-    let near = (1..30).map(|i| 2.0 * t * (1.0 - 0.75f64.powi(i)));
-    let mut best = (f64::INFINITY, t);
-    for radius in wide.chain(near).filter(|r| *r > sigma * 1.01) {
-        let value = log_truncation(t, sigma, radius, terms);
-        if value < best.0 {
-            best = (value, radius);
-        }
+    // Large ratios need a search on a logarithmic scale; there the optimum is far below 2t.
+    let widest = 2.0 * t / sigma;
+    if widest > 64.0 {
+        let power = best_ratio(widest.ln(), |u| log_truncation(t, sigma, sigma * u.exp(), terms));
+        return sigma * power.exp().min(0.999 * widest);
     }
-    best.1
+    sigma * best_ratio(widest, |ratio| log_truncation(t, sigma, sigma * ratio, terms))
 }
 
 /// Number of terms after which the truncation bound of `2 t F` is below `exp(goal)`.

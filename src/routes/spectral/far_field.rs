@@ -163,7 +163,8 @@ struct FixedList {
 
 impl FixedList {
     fn new(list: &[Real], scale: u32) -> Result<FixedList, RouteFailure> {
-        let mut result = FixedList { values: Vec::with_capacity(list.len()), size: Magnitude::ZERO, error: Magnitude::ZERO };
+        let mut result =
+            FixedList { values: Vec::with_capacity(list.len()), size: Magnitude::ZERO, error: Magnitude::ZERO };
         for ball in list {
             let (value, error) = fixed(ball, scale)?;
             result.size = result.size.max(ball.abs_upper());

@@ -82,9 +82,9 @@ impl Nodes {
 
 /// A ball in units of `2^-scale`, with the bound of its error in units.
 pub(super) fn fixed(value: &Real, scale: u32) -> Result<(Integer, Magnitude), RouteFailure> {
-    value.to_fixed(i64::from(scale)).ok_or(RouteFailure::OutOfReach {
-        reason: "a term of the spectral sum has no finite enclosure".to_owned(),
-    })
+    value
+        .to_fixed(i64::from(scale))
+        .ok_or(RouteFailure::OutOfReach { reason: "a term of the spectral sum has no finite enclosure".to_owned() })
 }
 
 /// `(w(x), sinh x)` from `e^(x/2)` and `e^x`.
