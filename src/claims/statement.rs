@@ -350,7 +350,7 @@ mod tests {
     #[test]
     fn filling_zeros_are_a_second_reading() {
         assert_eq!(Statement::parse("says", "1500").unwrap().readings.len(), 3);
-        assert_eq!(Statement::parse("says", "1500.").is_err(), true);
+        assert!(Statement::parse("says", "1500.").is_err());
         assert_eq!(Statement::parse("says", "0.1500").unwrap().readings.len(), 1);
     }
 

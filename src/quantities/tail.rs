@@ -188,7 +188,7 @@ impl TailRequest {
             return Err(Error::bad_input("max-bits", was, "give a working precision of at least 64 bits"));
         }
         let (_, latest) = tail_range::absolute(&self.time);
-        let edge = Rational::from(self.packet.half_width().upper() + latest);
+        let edge = self.packet.half_width().upper() + latest;
         match &self.beyond {
             Some(region) if *region.lower() < edge => {
                 let edge = readable(&edge);

@@ -198,7 +198,7 @@ pub(super) fn function_bound(time: &Rational, s: &Rational) -> Magnitude {
 
 /// `r = sqrt(s (s + 2t))`.
 fn separation(time: &Rational, s: &Rational) -> Real {
-    let square = Rational::from(s + Rational::from(time * 2)) * s;
+    let square = (s + Rational::from(time * 2)) * s;
     sqrt(&Real::from_rational(&square, BOUND_BITS), BOUND_BITS)
 }
 

@@ -384,7 +384,7 @@ fn horner(coefficients: &[Integer], argument: &Integer, scale: u32) -> Integer {
     let length = argument.significant_bits();
     let leading = Integer::from(argument >> length.saturating_sub(16)).to_u32().unwrap_or(u32::MAX);
     let zeros = 2 * scale.saturating_sub(length) + u32::from(length > 16 && leading < 46_340);
-    let needed = if zeros == 0 { coefficients.len() } else { (2 * scale / zeros) as usize + 1 };
+    let needed = (2 * scale).checked_div(zeros).map_or(coefficients.len(), |terms| terms as usize + 1);
     for coefficient in coefficients.iter().take(needed).rev() {
         value += coefficient;
         let used = value.significant_bits() + 8;

@@ -142,7 +142,7 @@ fn by_product(nodes: &Nodes, plan: &Plan, table: &Tangents, effort: &Effort) -> 
         (pack(nodes.weights[..near].iter().rev(), slot), plan.first as i64 - plan.near as i64),
     ] {
         effort.check()?;
-        for (index, coefficient) in unpack(&Integer::from(&ratios * weights), slot).iter().enumerate() {
+        for (index, coefficient) in unpack(&(&ratios * weights), slot).iter().enumerate() {
             let m = base + index as i64;
             let tangent = table.at(m.unsigned_abs() as usize);
             if m < 0 { total -= coefficient * tangent } else { total += coefficient * tangent }
