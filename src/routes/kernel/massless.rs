@@ -72,7 +72,7 @@ use std::f64::consts::{LN_2, LOG2_10, PI};
 /// Precision in which the tail bound is evaluated.
 const BOUND_BITS: Bits = 64;
 /// Precisions above this are refused.
-const MAX_BITS: f64 = 4e6;
+const MAX_BITS: f64 = 120_000.0;
 /// Attempts at a higher precision before the interval is given as it is.
 const MAX_ROUNDS: usize = 12;
 /// From this precision on, each dilogarithm is worth a thread of its own.
@@ -103,7 +103,7 @@ pub(super) fn evaluate(problem: &TailProblem, digits: u32, effort: &Effort) -> R
 }
 
 fn too_many_bits() -> RouteFailure {
-    RouteFailure::OutOfReach { reason: "the ratios of the inputs are so extreme that millions of bits would be needed".to_owned() }
+    RouteFailure::OutOfReach { reason: "the closed form would need more than 120000 bits".to_owned() }
 }
 
 /// The problem in units of `M = max(1, t)`.

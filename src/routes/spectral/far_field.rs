@@ -33,7 +33,7 @@
 use super::nodes::Nodes;
 use super::plan::{Plan, far_series_length, to_f64};
 use super::{BOUND_BITS, Setting, exp_minus_upper};
-use crate::arithmetic::{Magnitude, Real};
+use crate::arithmetic::{Bits, Magnitude, Real};
 use crate::functions::elementary::exp;
 use crate::routes::{Effort, RouteFailure};
 use rug::Integer;
@@ -151,12 +151,7 @@ fn inverse_power(lambda: &Real, power: usize) -> Magnitude {
 }
 
 /// `Sum Sum v v'/(cosh + cosh)` over the far nodes.
-fn far_far(
-    geometry: &Geometry,
-    alpha: &[Real],
-    plan: &Plan,
-    effort: &Effort,
-) -> Result<Real, RouteFailure> {
+fn far_far(geometry: &Geometry, alpha: &[Real], plan: &Plan, effort: &Effort) -> Result<Real, RouteFailure> {
     let bits = plan.bits;
     let most = plan.series_terms;
     let shares = shares(geometry, most, plan);
@@ -198,25 +193,27 @@ fn shares(geometry: &Geometry, most: usize, plan: &Plan) -> Vec<Real> {
     list
 }
 
-/// `s_1 = 1/2 + L(q) - 2 L(q^2)`.
+/// `s_1 = 1/2 + Sum_{r>=1} q^r/(1 + q^r)`.
 fn first_share(geometry: &Geometry, plan: &Plan) -> Real {
     let bits = plan.bits;
     let one = Real::from_i64(1);
     let q = one.sub(&one.div(&geometry.geometric[1], bits), bits);
-    let plain = lambert(&q, plan);
-    let squared = lambert(&q.square(bits), plan);
-    plain.sub(&squared.shift(1), bits).add(&one.shift(-1), bits)
+    alternating_lambert(&q, bits).add(&one.shift(-1), bits)
+}
+
+/// `Sum_{r>=1} q^r/(1 + q^r) = L(q) - 2 L(q^2)` for `0 < q < 1`.
+pub(super) fn alternating_lambert(q: &Real, bits: Bits) -> Real {
+    lambert(q, bits).sub(&lambert(&q.square(bits), bits).shift(1), bits)
 }
 
 /// `L(x) = Sum_{n>=1} x^(n^2) (1 + x^n)/(1 - x^n)` for `0 < x < 1`.
 ///
 /// The terms beyond `N` sum to at most `2 x^((N+1)^2)/(1 - x)^2`: each is at most `2 x^(n^2)/(1 - x)`, and
 /// `Sum_{n>N} x^(n^2) <= x^((N+1)^2)/(1 - x)`.
-fn lambert(x: &Real, plan: &Plan) -> Real {
-    let bits = plan.bits;
+fn lambert(x: &Real, bits: Bits) -> Real {
     let one = Real::from_i64(1);
     let square = x.square(bits);
-    let goal = Magnitude::power_of_two(-i64::from(plan.bits));
+    let goal = Magnitude::power_of_two(-i64::from(bits));
     let mut total = Real::zero();
     // power = x^n, gaussian = x^(n^2), odd = x^(2n+1)
     let (mut power, mut gaussian, mut odd) = (x.clone(), x.clone(), x.mul(&square, bits));
@@ -321,7 +318,8 @@ fn cross_coefficients(
 fn arguments(geometry: &Geometry, nodes: &Nodes, plan: &Plan) -> Result<Vec<(Integer, Integer)>, RouteFailure> {
     let bits = plan.bits;
     let one = Real::from_i64(1);
-    let lowest = exp(&Real::from_rational(&plan.step, bits).mul_i64(-(plan.near as i64 - plan.first as i64), bits), bits);
+    let lowest =
+        exp(&Real::from_rational(&plan.step, bits).mul_i64(-(plan.near as i64 - plan.first as i64), bits), bits);
     let growth = one.div(&nodes.decay, bits);
     let edge = one.div(&geometry.edge, bits).square(bits);
     let mut up = lowest.clone();
