@@ -1,6 +1,8 @@
 //! Mass zero: the closed form in position space against the sum in momentum space, and both against
 //! outside values and exact statements.
 
+#![allow(clippy::unwrap_used, reason = "helpers of tests fail loudly")]
+
 use coneproof::arithmetic::{ExactInput, Interval, Magnitude, Real};
 use coneproof::functions::dilogarithm;
 use coneproof::functions::elementary::{ln, ln_2, pi};

@@ -2,8 +2,9 @@
 //!
 //! # Formula
 //!
-//! The propagator is `G(v, t) = (i t/pi)/(v^2 - t^2) = (i/(2 pi)) (1/(v-t) - 1/(v+t))`, the limit of the massive
-//! one for small mass (`K_1(r)/r -> 1/r^2`). With half-width one, `u = 1 + t`, `s = |1 - t|` and `R = u + d`,
+//! The propagator is `G(v, t) = (i t/pi)/(v^2 - t^2) = (i/(2 pi)) (1/(v-t) - 1/(v+t))`, the limit of the
+//! massive one for small mass (`K_1(r)/r -> 1/r^2`). With half-width one, `u = 1 + t`, `s = |1 - t|` and
+//! `R = u + d`,
 //!
 //! ```text
 //! psi(x) = 2^(-1/2) Int_(x-1)^(x+1) G dv = (i/(2 pi sqrt 2)) L(x),
@@ -11,8 +12,8 @@
 //! P = 2 Int_R^inf |psi|^2 dx = I/(4 pi^2),     I = Int_R^inf L^2 dx.
 //! ```
 //!
-//! Put `m = min(1, t)`, `M = max(1, t)`: then `u = M + m`, `s = M - m`, and `I/M` depends only on `r = m/M <= 1`
-//! and `delta = d/M` (half-width and time may be exchanged). From here on `M = 1`: `u = 1 + r`, `s = 1 - r`.
+//! Put `m = min(1, t)`, `M = max(1, t)`: then `u = M + m`, `s = M - m`, and `I/M` depends only on `r = m/M <=
+//! 1` and `delta = d/M` (half-width and time may be exchanged). From here on `M = 1`: `u = 1 + r`, `s = 1 - r`.
 //!
 //! # Closed form
 //!
@@ -23,14 +24,14 @@
 //! ```
 //!
 //! * `y = (x-u)/(x+u)` turns `J_u` into `Int_z^1 L dy/y`, `z = delta/(2u + delta)`, where
-//!   `L = C - ln y + ln(1 + y/r) + ln(1 + r y)`, `C = ln r - 2 ln(1+r)`; since `-Li_2'(-y) = ln(1+y)/y` and
-//!   `Li_2(-1/r) + Li_2(-r) = -pi^2/6 - ln^2(r)/2` (DLMF 25.12.4),
+//!   `L = C - ln y + ln(1 + y/r) + ln(1 + r y)`, `C = ln r - 2 ln(1+r)`; since `dLi_2(-y)/dy = -ln(1+y)/y` and
+//!   `Li_2(-1/r) + Li_2(-r) = -pi^2/6 - ln^2(r)/2` (DLMF 25.12.4, number cited from memory),
 //!   `J_u = pi^2/6 + ln^2(r)/2 + Li_2(-z/r) + Li_2(-r z) + ln^2(z)/2 - C ln z`.
-//! * `y = (x-s)/(x+s)` turns `J_s` into `Int_w^1 L dy/y`, `w = (delta + 2r)/(delta + 2) >= r`, where
-//!   `L = 2 ln(1-r) - ln(1 - r/y) - ln(1 - r y)`, so `J_s = Li_2(r/w) - Li_2(r w) - 2 ln(1-r) ln w`.
+//! * `y = (x-s)/(x+s)` turns `J_s` into `Int_w^1 L dy/y`, `w = (delta + 2r)/(delta + 2) >= r`, where `L = 2
+//!   ln(1-r) - ln(1 - r/y) - ln(1 - r y)`, so `J_s = Li_2(r/w) - Li_2(r w) - 2 ln(1-r) ln w`.
 //!
-//! With `e = ln(1 + z/r) + ln(1 + r z)`, so that `ln z = C + e - L` at `x = R`, the squares that grow towards the
-//! cone cancel in algebra, and with `p = ln(1+r)`, `n = ln(1-r)`
+//! With `e = ln(1 + z/r) + ln(1 + r z)`, so that `ln z = C + e - L` at `x = R`, the squares that grow towards
+//! the cone cancel in algebra, and with `p = ln(1+r)`, `n = ln(1-r)`
 //!
 //! ```text
 //! I = u [pi^2/3 + 4 p (ln r - p) + 2 Li_2(-z/r) + 2 Li_2(-r z) - e (2L - e)] - delta L^2
@@ -43,22 +44,24 @@
 //! I = 2 pi^2 r/3 + 4 [(1+r) p (ln r - p) + (1-r) n ln r] + 2 (1-r) Li_2(r^2).
 //! ```
 //!
-//! For `r = 1` (`t` equal to the half-width) `s = 0` and the terms with `n` are absent. All arguments of the dilogarithm are
-//! exact rationals not above one. As `r -> 0` the last line gives `I -> 2 pi^2 r/3`, hence `P -> 1/6` for late times.
+//! For `r = 1` (`t` equal to the half-width) `s = 0` and the terms with `n` are absent. All arguments of the
+//! dilogarithm are exact rationals not above one. As `r -> 0` the last line gives `I -> 2 pi^2 r/3`, hence
+//! `P -> 1/6` for late times.
 //!
-//! The terms are of size one where `I` may be tiny. The working precision starts from an estimate of `I` and
-//! is raised until the enclosure is as narrow as asked; nothing but balls decides what is contained.
+//! The terms are of size one where `I` may be tiny. The working precision starts from an estimate of `I` and is
+//! raised until the enclosure is as narrow as asked; nothing but balls decides what is contained.
 //!
 //! # Far series
 //!
 //! For `rho = u/R` small, `L = Sum_{k>=1} (u^(2k) - s^(2k))/(k x^(2k))`. With `y = (s/u)^2`, `u^2 - s^2 = 4r`,
 //!
 //! ```text
-//! I = (16 r^2/R^3) Sum_{n>=2} b_n rho^(2n-4)/(2n-1),   b_n = Sum_{k=1}^{n-1} a_k a_(n-k),   a_k = (1 + y + ... + y^(k-1))/k.
+//! I = (16 r^2/R^3) Sum_{n>=2} b_n rho^(2n-4)/(2n-1),
+//! b_n = Sum_{k=1}^{n-1} a_k a_(n-k),     a_k = (1 + y + ... + y^(k-1))/k.
 //! ```
 //!
-//! All terms are positive and `a_k <= 1`, so `b_n <= n - 1` and the terms beyond `N` are at most
-//! `Sum_{n>N} (n-1)/(2n-1) rho^(2n-4) <= rho^(2N-2)/(2 (1 - rho^2))`, to be added to a sum of at least `1/3`.
+//! All terms are positive and `a_k <= 1`, so `b_n <= n - 1` and the terms beyond `N` are at most `Sum_{n>N}
+//! (n-1)/(2n-1) rho^(2n-4) <= rho^(2N-2)/(2 (1 - rho^2))`, to be added to a sum of at least `1/3`.
 
 use crate::arithmetic::{Bits, Magnitude, Real, decimal};
 use crate::functions::dilogarithm::dilogarithm_of_rational;
@@ -214,7 +217,7 @@ impl Shape {
         let (u, s, r, delta) = (self.outer(), self.inner(), &self.ratio, &self.distance);
         let reach = Rational::from(&u * 2) + delta;
         let z = Rational::from(delta / &reach);
-        let w = Rational::from(Rational::from(r * 2) + delta) / Rational::from(delta + 2);
+        let w = (Rational::from(r * 2) + delta) / Rational::from(delta + 2);
         let (z_over, z_times) = (Rational::from(&z / r), Rational::from(&z * r));
         let mut arguments = vec![Rational::from(-&z_over), Rational::from(-&z_times)];
         if s != 0 {

@@ -9,8 +9,6 @@ use rug::Integer;
 
 /// Weights of the nodes `first..=last`, with `exp(-E)` taken out.
 pub(super) struct Nodes {
-    /// Index of the first node.
-    pub first: usize,
     /// `floor(w_k 2^scale)`.
     pub weights: Vec<Integer>,
     /// `floor(w_k / (2 sinh kh) 2^scale)`.
@@ -32,7 +30,6 @@ impl Nodes {
         let mut half = half_at_first;
         let count = plan.last - plan.first + 1;
         let mut nodes = Nodes {
-            first: plan.first,
             weights: Vec::with_capacity(count),
             ratios: Vec::with_capacity(count),
             error_units: Magnitude::ZERO,

@@ -1,13 +1,14 @@
 //! The finite sums of the massless spectral route, in fixed point.
 //!
-//! **Near sum** `Sum_{k,l} C_(k-l) v_k v_l = C_0 A_0 + 2 Sum_{m>=1} C_m A_m`, `A_m = Sum_k v_k v_(k+m)`. Integer products and sums
-//! are exact. Let the `n` integers for `v` be off by at most `e` units `u`, those for `C <= 1/2` by at most two units `u'`, and let
-//! `V` be the sum of the integers for `v`. Then `v_k v_l` is off by at most `e (V_k + V_l) + e^2` units `u^2`, so the
-//! sum is off by at most `(n e V + n^2 e^2/2) u^2` through `v` and `2 V^2 u^2 u'` through `C`.
+//! **Near sum** `Sum_{k,l} C_(k-l) v_k v_l = C_0 A_0 + 2 Sum_{m>=1} C_m A_m`, `A_m = Sum_k v_k v_(k+m)`.
+//! Integer products and sums are exact. Let the `n` integers for `v` be off by at most `e` units `u`, those for
+//! `C <= 1/2` by at most two units `u'`, and let `V` be the sum of the integers for `v`. Then `v_k v_l` is off
+//! by at most `e (V_k + V_l) + e^2` units `u^2`, so the sum is off by at most `(n e V + n^2 e^2/2) u^2` through
+//! `v` and `2 V^2 u^2 u'` through `C`.
 //!
-//! **Near-far sum** `1/2 Sum_k r_k U_(K-k)`, `r_k = w_k/kappa_k`: with the integers for `r` off by at most `e` units `u` and adding
-//! up to `R`, those for `U` off by at most `f` units `u'` and all at most `U_0`, it is off by at most
-//! `(R f + n e (U_0 + f))/2` units `u u'`.
+//! **Near-far sum** `1/2 Sum_k r_k U_(K-k)`, `r_k = w_k/kappa_k`: with the integers for `r` off by at most `e`
+//! units `u` and adding up to `R`, those for `U` off by at most `f` units `u'` and all at most `U_0`, it is off
+//! by at most `(R f + n e (U_0 + f))/2` units `u u'`.
 
 use super::plan::Plan;
 use crate::arithmetic::{Magnitude, Real};
@@ -89,19 +90,15 @@ impl Nodes {
         }
         Ok(Nodes { weights, ratios })
     }
-
-    /// Number of nodes.
-    pub(super) fn len(&self) -> usize {
-        self.weights.values.len()
-    }
 }
 
 /// `C_m` and `T_m` for `m = 0, 1, ...` in units of `2^-coupling_scale`.
 ///
-/// From `y = e^(-mh/2)` by repeated fixed-point products with 32 extra bits: each step shrinks the error it has and adds at
-/// most one small unit for the rounding and less than two for the factor, so `y` is off by at most `3 m` small units, below one
-/// unit for fewer than `2^30` steps. `C = y/(1 + y^2)` has a derivative at most one in `y`, so with one rounding down it is
-/// off by less than two units, and `T = y C` by less than `2 + 1/2 + 1 < 4`.
+/// From `y = e^(-mh/2)` by repeated fixed-point products with 32 extra bits: each step shrinks the error it has
+/// and adds at most one small unit for the rounding and less than two for the factor, so `y` is off by at most
+/// `3 m` small units, below one unit for fewer than `2^30` steps. `C = y/(1 + y^2)` has a derivative at most
+/// one in `y`, so with one rounding down it is off by less than two units, and `T = y C` by less
+/// than `2 + 1/2 + 1 < 4`.
 pub(super) struct Couplings {
     cosh: Vec<Integer>,
     fermi: Vec<Integer>,
@@ -171,10 +168,8 @@ pub(super) fn near_far(nodes: &Nodes, couplings: &Couplings, whole: &Real, plan:
     let largest = magnitude(&rest);
     let mut total = Integer::new();
     for (n, ratio) in list.values.iter().rev().enumerate() {
-        if n > 0 {
-            if let Some(term) = couplings.fermi.get(n) {
-                rest -= term;
-            }
+        if let (1.., Some(term)) = (n, couplings.fermi.get(n)) {
+            rest -= term;
         }
         total += ratio * &rest;
     }
