@@ -22,8 +22,18 @@ fn main() -> Result<(), Box<dyn std::error::Error>> {
         Some(Ok(o)) => {
             println!("{}", decimal::lower_decimal(o.interval.lower(), digits + 5));
             println!("{}", decimal::upper_decimal(o.interval.upper(), digits + 5));
-            println!("digits {} bits {} nodes {} best ms {:.4}", o.interval.relative_digits(digits + 50), o.bits, o.nodes, best * 1e3);
-            if std::env::var("WITNESS").is_ok() { for (n, v) in o.witness { println!("  {n}: {v}"); } }
+            println!(
+                "digits {} bits {} nodes {} best ms {:.4}",
+                o.interval.relative_digits(digits + 50),
+                o.bits,
+                o.nodes,
+                best * 1e3
+            );
+            if std::env::var("WITNESS").is_ok() {
+                for (n, v) in o.witness {
+                    println!("  {n}: {v}");
+                }
+            }
         }
         Some(Err(e)) => println!("{e}"),
         None => {}

@@ -171,12 +171,7 @@ impl Ratios {
 }
 
 /// The series of `2 t F`, with its constant.
-fn logarithmic(
-    problem: &TailProblem,
-    plan: &EdgePlan,
-    carry: &Carry,
-    effort: &Effort,
-) -> Result<Parts, RouteFailure> {
+fn logarithmic(problem: &TailProblem, plan: &EdgePlan, carry: &Carry, effort: &Effort) -> Result<Parts, RouteFailure> {
     let scale = plan.scale;
     let ratios = Ratios::new(&problem.time, &plan.to);
     let one = Coefficient { value: Integer::from(1) << scale, error: Magnitude::ZERO };

@@ -148,11 +148,7 @@ struct Piece {
 }
 
 /// Fixes the constants of integration from the far end inward.
-fn carry_inward(
-    problem: &TailProblem,
-    plan: &Plan,
-    series: &[PanelPair],
-) -> Result<(Vec<Piece>, Carry), RouteFailure> {
+fn carry_inward(problem: &TailProblem, plan: &Plan, series: &[PanelPair]) -> Result<(Vec<Piece>, Carry), RouteFailure> {
     let shift = Rational::from(&problem.half_width * 2);
     let end = plan.far_end();
     let mut carry = Carry {
@@ -226,11 +222,7 @@ fn all_squares(pieces: &[Piece], plan: &Plan, effort: &Effort) -> Result<Vec<Rea
         let slack = piece.size.shift(1).add(piece.error).mul(piece.error).shift(1);
         Ok(sum.widen(slack).mul(&half_width, plan.bits))
     };
-    if plan.bits >= PARALLEL_FROM {
-        pieces.par_iter().map(one).collect()
-    } else {
-        pieces.iter().map(one).collect()
-    }
+    if plan.bits >= PARALLEL_FROM { pieces.par_iter().map(one).collect() } else { pieces.iter().map(one).collect() }
 }
 
 /// `t^2/(pi^2 a)`.

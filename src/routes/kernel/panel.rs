@@ -136,7 +136,6 @@ impl PanelSeries {
         let left_value = Real::from_scaled(&alternating, -i64::from(scale)).widen(error);
         Ok(Anchored { coefficients, error, left_value })
     }
-
 }
 
 /// `F` on the whole panel when no coefficient is kept: the variation is at most the value at its

@@ -181,9 +181,8 @@ mod tests {
 
     #[test]
     fn packed_squares_agree_with_pairs() {
-        let values: Vec<Integer> = (0..150u32)
-            .map(|n| (Integer::from(1) << (600 - 4 * n.min(149))) / (3 * n + 7) + n)
-            .collect();
+        let values: Vec<Integer> =
+            (0..150u32).map(|n| (Integer::from(1) << (600 - 4 * n.min(149))) / (3 * n + 7) + n).collect();
         let list: Vec<&Integer> = values.iter().collect();
         let (fast, slack) = packed(&list);
         let slow = by_pairs(&list);

@@ -151,12 +151,7 @@ fn inverse_power(lambda: &Real, power: usize) -> Magnitude {
 }
 
 /// `Sum Sum v v'/(cosh + cosh)` over the far nodes.
-fn far_far(
-    geometry: &Geometry,
-    alpha: &[Real],
-    plan: &Plan,
-    effort: &Effort,
-) -> Result<Real, RouteFailure> {
+fn far_far(geometry: &Geometry, alpha: &[Real], plan: &Plan, effort: &Effort) -> Result<Real, RouteFailure> {
     let bits = plan.bits;
     let most = plan.series_terms;
     let shares = shares(geometry, most, plan);
@@ -321,7 +316,8 @@ fn cross_coefficients(
 fn arguments(geometry: &Geometry, nodes: &Nodes, plan: &Plan) -> Result<Vec<(Integer, Integer)>, RouteFailure> {
     let bits = plan.bits;
     let one = Real::from_i64(1);
-    let lowest = exp(&Real::from_rational(&plan.step, bits).mul_i64(-(plan.near as i64 - plan.first as i64), bits), bits);
+    let lowest =
+        exp(&Real::from_rational(&plan.step, bits).mul_i64(-(plan.near as i64 - plan.first as i64), bits), bits);
     let growth = one.div(&nodes.decay, bits);
     let edge = one.div(&geometry.edge, bits).square(bits);
     let mut up = lowest.clone();

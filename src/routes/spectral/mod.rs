@@ -175,7 +175,8 @@ impl Setting {
                 (b.clone(), crate::functions::elementary::cos(&b, bits))
             }
         };
-        let constant = if cosine.certainly_positive() { Magnitude::ONE.div(cosine.abs_lower()).min(wide) } else { wide };
+        let constant =
+            if cosine.certainly_positive() { Magnitude::ONE.div(cosine.abs_lower()).min(wide) } else { wide };
         let decay = exp_m1(&pi(bits).mul(&strip, bits).shift(1).div(&step, bits), bits);
         let loss = exp(&one.sub(&cosine, bits).mul(&self.proper_distance, bits), bits);
         let size = pi(bits).square(bits).add(&step, bits).abs_upper().shift(-1);

@@ -74,9 +74,7 @@ fn out_of_reach(reason: &str) -> RouteFailure {
 /// The largest step for which Theorem C reaches `exp(-goal)`, with the strip that allows it.
 fn choose_step(a: f64, distance: f64, goal: f64) -> (Rational, Option<f64>) {
     let wide = (a * 1f64.cosh()).max(1.0 / 1f64.tanh());
-    let step_for = |b: f64, constant: f64| {
-        2.0 * PI * b / (goal + (5.0 * constant).ln() + distance * (1.0 - b.cos()))
-    };
+    let step_for = |b: f64, constant: f64| 2.0 * PI * b / (goal + (5.0 * constant).ln() + distance * (1.0 - b.cos()));
     let mut best = (step_for(FRAC_PI_2, wide), None);
     for index in 1..240 {
         let b = FRAC_PI_2 * 1.03f64.powi(-index);
