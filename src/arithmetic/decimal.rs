@@ -160,7 +160,7 @@ impl Written {
 mod tests {
     use super::*;
     use crate::arithmetic::ExactInput;
-    use rug::Rational;
+    use rug::{Integer, Rational};
 
     fn read(text: &str) -> Rational {
         text.parse::<ExactInput>().unwrap().lower().clone()
