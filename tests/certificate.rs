@@ -1,5 +1,7 @@
 //! Certificates: what is hashed, what is refused, and files that are written entirely or not at all.
 
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
+
 use coneproof::certificate::Certificate;
 use coneproof::packets::BoxPacket;
 use coneproof::quantities::tail::TailRequest;

@@ -3,6 +3,8 @@
 //!
 //! Exit code 4 would be a contradiction inside the program, so here it is a failure.
 
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
+
 use coneproof::arithmetic::ExactInput;
 use proptest::prelude::*;
 use rug::{Integer, Rational};

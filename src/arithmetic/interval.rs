@@ -5,7 +5,7 @@ use rug::{Float, Rational};
 
 /// A closed interval `[lower, upper]` with `lower <= upper`; an infinite bound says nothing is
 /// known on that side.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Interval {
     lower: Float,
     upper: Float,

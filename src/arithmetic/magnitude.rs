@@ -19,6 +19,8 @@ pub struct Magnitude {
     exponent: i64,
 }
 
+// Named methods, not operators: they round up, which an operator would not show.
+#[allow(clippy::should_implement_trait)]
 impl Magnitude {
     /// Exactly zero.
     pub const ZERO: Magnitude = Magnitude { mantissa: 0, exponent: 0 };

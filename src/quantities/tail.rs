@@ -199,7 +199,7 @@ impl TailRequest {
             return Err(Error::bad_input("max-bits", was, "give a working precision of at least 64 bits"));
         }
         let (_, latest) = tail_range::absolute(&self.time);
-        let edge = Rational::from(self.packet.half_width().upper() + latest);
+        let edge = self.packet.half_width().upper() + latest;
         match &self.beyond {
             Some(region) if *region.lower() < edge => {
                 let edge = readable(&edge);
@@ -357,7 +357,7 @@ const BELOW_ARITHMETIC: &str = "the probability is below 1e-300000000, outside t
 /// MPFR's numbers reach down to `-2^30` by default, and `2 * 3.7e8 / ln 2` is just under `2^30`.
 fn below_arithmetic(problem: &TailProblem) -> bool {
     let (t, d) = (&problem.time, &problem.distance);
-    !problem.massless && Rational::from(d + Rational::from(t * 2)) * d > Rational::from(370_000_000u64).square()
+    !problem.massless && (d + Rational::from(t * 2)) * d > Rational::from(370_000_000u64).square()
 }
 
 /// The moment at which the next one of several routes has to stop, so that each gets its share.

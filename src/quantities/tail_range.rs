@@ -274,7 +274,7 @@ fn ends(low: &Rational, high: &Rational) -> Vec<Rational> {
         }
         // Any increasing ends will do, so the power may be rough.
         let power = Rational::from_f64(ratio.powf(f64::from(k) / f64::from(PIECES))).unwrap_or_default();
-        Rational::from(low * power)
+        low * power
     };
     let mut ends = vec![low.clone()];
     for end in (1..PIECES).map(inner).chain([high.clone()]) {

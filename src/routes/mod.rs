@@ -110,3 +110,43 @@ pub trait Route: Sync {
     /// [`RouteFailure`] if the effort does not suffice or the problem is out of reach.
     fn evaluate(&self, problem: &TailProblem, digits: u32, effort: &Effort) -> Result<RouteOutcome, RouteFailure>;
 }
+
+/// One way to one probability, with the question built in: what [`crate::quantities`] drives.
+///
+/// A [`Route`] with its problem is one (see [`Bound`]); routes of other packets implement it directly.
+pub trait Evaluation: Sync {
+    /// Name on the command line and in certificates: `kernel`, `spectral`, ...
+    fn name(&self) -> &'static str;
+
+    /// One sentence on the method, for certificates.
+    fn method(&self) -> &'static str;
+
+    /// An enclosure of the probability aiming at a relative width of `10^-digits`; the width is the caller's to check.
+    ///
+    /// # Errors
+    /// [`RouteFailure`] if the effort does not suffice or the problem is out of reach.
+    fn evaluate(&self, digits: u32, effort: &Effort) -> Result<RouteOutcome, RouteFailure>;
+}
+
+/// A route with its problem.
+#[derive(Clone, Copy)]
+pub struct Bound<'a> {
+    /// The route.
+    pub route: &'a dyn Route,
+    /// The problem.
+    pub problem: &'a TailProblem,
+}
+
+impl Evaluation for Bound<'_> {
+    fn name(&self) -> &'static str {
+        self.route.name()
+    }
+
+    fn method(&self) -> &'static str {
+        self.route.method()
+    }
+
+    fn evaluate(&self, digits: u32, effort: &Effort) -> Result<RouteOutcome, RouteFailure> {
+        self.route.evaluate(self.problem, digits, effort)
+    }
+}

@@ -53,7 +53,7 @@
 //! `e (2c + e) Int (1 + |ln y|)^2 = 5 e (2c + e)`.
 
 use super::panel::{PanelSeries, fixed};
-use super::plan::EdgePlan;
+use super::plan::{EdgePlan, best_ratio};
 use super::squares::signed_product;
 use super::{BOUND_BITS, Carry};
 use crate::arithmetic::{Bits, Magnitude, Real};
@@ -84,7 +84,7 @@ pub(super) fn integral(
     let slack = bound.shift(1).add(error).mul(error).mul(Magnitude::from_u64(5));
     let bits = plan.scale + 64;
     let moments = moments(&parts, plan, bits).widen(slack);
-    let weight = Rational::from(&plan.to / Rational::from(problem.time.square_ref())) / 4;
+    let weight = (&plan.to / Rational::from(problem.time.square_ref())) / 4;
     Ok(moments.mul(&Real::from_rational(&weight, bits), bits))
 }
 
@@ -112,16 +112,11 @@ impl Coefficient {
         Coefficient { value: Integer::new(), error: Magnitude::ZERO }
     }
 
-    /// `-(sum of weight_i * term_i) / divisor`, rounded: one more unit of error.
-    fn combined(terms: &[(&Integer, &Coefficient)], divisor: &Integer) -> Coefficient {
-        let mut sum = Integer::new();
-        let mut error = Magnitude::ZERO;
-        for (weight, term) in terms {
-            sum += *weight * &term.value;
-            error = error.add(magnitude(weight).mul(term.error));
-        }
-        let value = -(sum / divisor);
-        Coefficient { value, error: error.div(magnitude_below(divisor)).add(Magnitude::ONE) }
+    /// `-sum/divisor`, rounded; `error` is that of the quotient before rounding.
+    fn quotient(mut sum: Integer, divisor: &Integer, error: Magnitude) -> Coefficient {
+        sum /= divisor;
+        sum = -sum;
+        Coefficient { value: sum, error: error.add(Magnitude::ONE) }
     }
 
     fn from_real(value: &Real, scale: u32) -> Result<Coefficient, RouteFailure> {
@@ -130,43 +125,67 @@ impl Coefficient {
     }
 }
 
-fn magnitude(value: &Integer) -> Magnitude {
-    Real::from_scaled(value, 0).abs_upper()
-}
-
-fn magnitude_below(value: &Integer) -> Magnitude {
-    Real::from_scaled(value, 0).abs_lower()
-}
-
-/// The integers of the recurrence: `2 tau = tau.0/tau.1`, `chi = chi.0/chi.1`.
+/// The rational numbers of the recurrence as integers, and bounds of them for the errors.
 struct Ratios {
+    /// `2 tau`.
     tau: (Integer, Integer),
+    /// `chi`.
     chi: (Integer, Integer),
+    /// `(denominator of 2 tau) * (denominator of chi)` and the two products that go with it.
+    common: Integer,
+    first_weight: Integer,
+    second_weight: Integer,
+    /// Upper bound of `tau`.
+    tau_bound: Magnitude,
+    /// Upper bound of `chi`.
+    chi_bound: Magnitude,
 }
 
 impl Ratios {
     fn new(time: &Rational, sigma: &Rational) -> Ratios {
-        let tau = Rational::from(sigma / time).into_numer_denom();
-        let half = Rational::from(time * sigma) / 2i32;
-        let chi: (Integer, Integer) = half.into_numer_denom();
-        Ratios { tau, chi }
+        let twice_tau = Rational::from(sigma / time);
+        let chi = Rational::from(time * sigma) / 2i32;
+        let (tau_bound, chi_bound) = (magnitude_of(&twice_tau).shift(-1), magnitude_of(&chi));
+        let (tau, chi): ((Integer, Integer), (Integer, Integer)) =
+            (twice_tau.into_numer_denom(), chi.into_numer_denom());
+        Ratios {
+            common: Integer::from(&tau.1 * &chi.1),
+            first_weight: Integer::from(&chi.0 * &tau.1),
+            second_weight: Integer::from(&chi.0 * &tau.0),
+            tau,
+            chi,
+            tau_bound,
+            chi_bound,
+        }
     }
 
     /// `-(extra + chi (first + 2 tau second))/n`.
     fn next_k(&self, first: &Coefficient, second: &Coefficient, extra: &Coefficient, n: u64) -> Coefficient {
-        let divisor = Integer::from(&self.tau.1 * &self.chi.1);
-        let weights = (Integer::from(&self.chi.0 * &self.tau.1), Integer::from(&self.chi.0 * &self.tau.0));
-        Coefficient::combined(&[(&weights.0, first), (&weights.1, second), (&divisor.clone(), extra)], &(divisor * n))
+        let mut sum = Integer::from(&self.first_weight * &first.value);
+        sum += &self.second_weight * &second.value;
+        sum += &self.common * &extra.value;
+        let inner = self.tau_bound.shift(1).mul(second.error).add(first.error);
+        let error = self.chi_bound.mul(inner).add(extra.error).div(Magnitude::from_u64(n));
+        Coefficient::quotient(sum, &Integer::from(&self.common * n), error)
     }
 
-    /// `-[tau before + (k + 2 tau k_before + tau b_before + b)/(n+1)]`.
+    /// `-[tau before + (k + b + tau (2 k_before + b_before))/(n+1)]`.
     fn next_g(&self, before: &Coefficient, others: [&Coefficient; 4], n: u64) -> Coefficient {
         let [k, k_before, b_before, b] = others;
-        let divisor = Integer::from(&self.tau.1 * 2) * (n + 1);
-        let twice = Integer::from(&self.tau.1 * 2);
-        let weights = (Integer::from(&self.tau.0 * (n + 1)), Integer::from(&self.tau.0 * 2));
-        let terms = [(&weights.0, before), (&twice, k), (&weights.1, k_before), (&self.tau.0, b_before), (&twice, b)];
-        Coefficient::combined(&terms, &divisor)
+        let mut inner = Integer::from(&k_before.value << 1);
+        inner += &b_before.value;
+        inner += &before.value * (n + 1);
+        let mut sum = inner * &self.tau.0;
+        let twice = Integer::from(&self.tau.1 << 1);
+        sum += Integer::from(&k.value + &b.value) * &twice;
+        let fresh = k.error.add(b.error).add(self.tau_bound.mul(k_before.error.shift(1).add(b_before.error)));
+        let error = self.tau_bound.mul(before.error).add(fresh.div(Magnitude::from_u64(n + 1)));
+        Coefficient::quotient(sum, &(twice * (n + 1)), error)
+    }
+
+    /// `chi value`, negated.
+    fn minus_chi(&self, value: &Coefficient) -> Coefficient {
+        Coefficient::quotient(Integer::from(&self.chi.0 * &value.value), &self.chi.1, self.chi_bound.mul(value.error))
     }
 }
 
@@ -192,17 +211,17 @@ fn logarithmic(problem: &TailProblem, plan: &EdgePlan, carry: &Carry, effort: &E
             series[0].push(Integer::new());
             series[1].push(Integer::from(-&one.value));
         } else {
-            let b = Coefficient::combined(&[(&Integer::from(1), &gb[1])], &Integer::from(n));
-            let unit = Integer::from(1);
-            let a = Coefficient::combined(&[(&unit, &ga[1]), (&unit, &b)], &Integer::from(n));
+            let (divisor, count) = (Integer::from(n), Magnitude::from_u64(n));
+            let b = Coefficient::quotient(gb[1].value.clone(), &divisor, gb[1].error.div(count));
+            let both = Integer::from(&ga[1].value + &b.value);
+            let a = Coefficient::quotient(both, &divisor, ga[1].error.add(b.error).div(count));
             errors[0] = errors[0].add(a.error);
             errors[1] = errors[1].add(b.error);
             series[0].push(a.value);
             series[1].push(b.value);
         }
         let (next_ka, next_kb) = if n == 0 {
-            let b = Coefficient::combined(&[(&ratios.chi.0, &one)], &ratios.chi.1);
-            (Coefficient::from_real(&start, scale)?, b)
+            (Coefficient::from_real(&start, scale)?, ratios.minus_chi(&one))
         } else {
             let b = ratios.next_k(&gb[1], &gb[0], &zero, n);
             (ratios.next_k(&ga[1], &ga[0], &b, n), b)
@@ -345,19 +364,15 @@ fn log_truncation(t: f64, sigma: f64, radius: f64, terms: f64) -> f64 {
     radius.ln() + bound - terms * (radius / sigma).ln() - terms.ln() - (-(sigma / radius)).ln_1p()
 }
 
-/// A good radius for the truncation bound.
+/// A good radius for the truncation bound, between `sigma` and `2t`.
 fn best_radius(t: f64, sigma: f64, terms: f64) -> f64 {
-    let ratio = 2.0 * t / sigma;
-    let wide = (1..60).map(|i| sigma * ratio.powf(f64::from(i) / 60.0));
-    let near = (1..30).map(|i| 2.0 * t * (1.0 - 0.75f64.powi(i)));
-    let mut best = (f64::INFINITY, t);
-    for radius in wide.chain(near).filter(|r| *r > sigma * 1.01) {
-        let value = log_truncation(t, sigma, radius, terms);
-        if value < best.0 {
-            best = (value, radius);
-        }
+    // Large ratios need a search on a logarithmic scale; there the optimum is far below 2t.
+    let widest = 2.0 * t / sigma;
+    if widest > 64.0 {
+        let power = best_ratio(widest.ln(), |u| log_truncation(t, sigma, sigma * u.exp(), terms));
+        return sigma * power.exp().min(0.999 * widest);
     }
-    best.1
+    sigma * best_ratio(widest, |ratio| log_truncation(t, sigma, sigma * ratio, terms))
 }
 
 /// Number of terms after which the truncation bound of `2 t F` is below `exp(goal)`.

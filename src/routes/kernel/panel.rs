@@ -103,7 +103,7 @@ impl PanelSeries {
             // Everything is below one unit.
             return Ok(PanelSeries { coefficients: vec![Integer::new()], error: full_size(time, s, half) });
         }
-        let square = Rational::from(s + Rational::from(time * 2)) * s;
+        let square = (s + Rational::from(time * 2)) * s;
         let wide = Real::from_rational(half, scale + 64);
         let (k, g) = start_values(&square, half, scale);
         let (k, k_error) = fixed(&k.mul(&wide, scale + 64), scale)?;
@@ -215,40 +215,28 @@ struct Amplification {
 }
 
 fn amplification(time: &Rational, s: &Rational, half: &Rational) -> Amplification {
-    const PIECES: i64 = 8;
+    const PIECES: u64 = 8;
     let bits = BOUND_BITS;
-    let one = Real::from_i64(1);
-    let far = Rational::from(s + Rational::from(time * 2));
+    let one = Magnitude::ONE;
+    let far = s + Rational::from(time * 2);
     let square = Real::from_rational(&Rational::from(&far * s), bits);
     let root = sqrt(&square, bits);
-    let balance = if root.certainly_less(&one) { one.clone() } else { root };
-    let first = Real::from_rational(&Rational::from(half / s), bits);
-    let second = Real::from_rational(&Rational::from(half / &far), bits);
-    let width = Real::from_rational(half, bits);
-    let centre = Real::from_rational(&Rational::from(time + s), bits);
-    let mut gamma = Real::zero();
+    let (balance, balance_below) = (root.abs_upper().max(one), root.abs_lower().max(one));
+    let upper = |value: Rational| Real::from_rational(&value, bits).abs_upper();
+    let (first, second) = (upper(Rational::from(half / s)), upper(Rational::from(half / &far)));
+    let (width, centre) = (upper(half.clone()), upper(Rational::from(time + s)));
+    let square = square.abs_lower();
+    let mut gamma = Magnitude::ZERO;
     let mut sharpness = Magnitude::INFINITY;
     for piece in 1..=PIECES {
-        let x = Real::from_i64(piece).div_u64(PIECES as u64, bits);
-        let left = one.sub(&first.mul(&x, bits), bits);
-        let right = one.sub(&second.mul(&x, bits), bits);
-        let shape = left.mul(&right, bits);
-        let v = centre.add(&width.mul(&x, bits), bits).mul(&width, bits);
-        let upper = balance.add(&Real::from_i64(2), bits).div(&square.mul(&shape, bits), bits);
-        let lower = one.div(&balance, bits);
-        let norm = Real::from_float(upper.abs_upper().max(lower.abs_upper()).to_float());
-        gamma = gamma.add(&v.mul(&norm, bits).div_u64(PIECES as u64, bits), bits);
-        sharpness = Magnitude::ONE.div(shape.abs_lower());
-        if !shape.certainly_positive() {
-            sharpness = Magnitude::INFINITY;
-        }
+        let x = Magnitude::from_u64(piece).shift(-3);
+        let shape = one.sub_down(first.mul(x)).mul_down(one.sub_down(second.mul(x)));
+        let norm = balance.add(one.shift(1)).div(square.mul_down(shape)).max(one.div(balance_below));
+        gamma = gamma.add(centre.add(width.mul(x)).mul(width).mul(norm).shift(-3));
+        sharpness = one.div(shape);
     }
-    Amplification {
-        growth: exp(&gamma, bits).abs_upper(),
-        balance: balance.abs_upper(),
-        balance_below: balance.abs_lower(),
-        sharpness,
-    }
+    let growth = exp(&Real::from_float(gamma.to_float()), bits).abs_upper();
+    Amplification { growth, balance, balance_below, sharpness }
 }
 
 /// Bound of the sum of all terms beyond `terms`.
@@ -260,7 +248,7 @@ fn truncation(time: &Rational, s: &Rational, half: &Rational, terms: usize) -> M
         -r - 0.5 * r.ln() - (t + left).ln() - (terms as f64 + 1.0) * ratio.ln() - (1.0 - 1.0 / ratio).ln()
     };
     let ratio = dyadic(best_ratio(sf / w, cost), 20);
-    let left = Rational::from(s - Rational::from(half * &ratio));
+    let left = s - Rational::from(half * &ratio);
     let size = function_bound(time, &left);
     let ratio = Real::from_rational(&ratio, BOUND_BITS);
     let inverse = Real::from_i64(1).div(&ratio, BOUND_BITS);

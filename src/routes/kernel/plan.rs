@@ -100,18 +100,25 @@ impl Sizes {
     }
 }
 
-/// The radius ratio in `(1, widest)` that makes `cost` smallest.
+/// A ratio in `(1, widest)` that makes `cost` small: a golden-section search in `ln((ratio - 1)/(widest - ratio))`.
 pub(super) fn best_ratio(widest: f64, cost: impl Fn(f64) -> f64) -> f64 {
-    let mut best = (f64::INFINITY, 0.5 * (1.0 + widest));
-    for index in 1..=40 {
-        let ratio = 1.0 + (widest - 1.0) * (1.0 - 0.72f64.powi(index));
-        let ratio = if index > 26 { 1.0 + (widest - 1.0) * 0.72f64.powi(index - 26) } else { ratio };
-        let value = cost(ratio);
-        if value < best.0 {
-            best = (value, ratio);
+    const GOLDEN: f64 = 0.618_033_988_749_895;
+    let place = |u: f64| (1.0 + widest * u.exp()) / (1.0 + u.exp());
+    let (mut low, mut high) = (-9.0, 9.0);
+    let (mut left, mut right) = (high - GOLDEN * (high - low), low + GOLDEN * (high - low));
+    let (mut at_left, mut at_right) = (cost(place(left)), cost(place(right)));
+    for _ in 0..9 {
+        if at_left < at_right {
+            (high, right, at_right) = (right, left, at_left);
+            left = high - GOLDEN * (high - low);
+            at_left = cost(place(left));
+        } else {
+            (low, left, at_left) = (left, right, at_right);
+            right = low + GOLDEN * (high - low);
+            at_right = cost(place(right));
         }
     }
-    best.1
+    place(if at_left < at_right { left } else { right })
 }
 
 impl Plan {
@@ -122,7 +129,7 @@ impl Plan {
             return Err(refused("the ratios of the inputs are outside 1e-290 to 1e290"));
         }
         let size = log_probability(a, t, d).min(0.0) + (PI * PI * a).ln() - 2.0 * t.ln();
-        let tolerance = size - f64::from(digits) * LN_10 - 3.0;
+        let tolerance = size - f64::from(digits) * LN_10 - 5.0;
         let sizes = Sizes { t, a, tolerance };
         let goal = f64::from(digits) * LN_10;
         let sigma = edge_width(a, t, goal);

@@ -30,8 +30,9 @@
 //! `Z2^n V(lambda Z2) lambda^-(J+1)/((1 - 1/lambda)(1-q))`, and `r_k e^(n x_k) Z2^n <= g^n/4` sums over `k` and `n`
 //! to at most `count * g/(1-g)/2` times the rest.
 
-use super::nodes::Nodes;
-use super::plan::{Plan, far_series_length, to_f64};
+use super::cone_nodes::Powers;
+use super::nodes::{Nodes, fixed};
+use super::plan::{Plan, far_series_length};
 use super::{BOUND_BITS, Setting, exp_minus_upper};
 use crate::arithmetic::{Magnitude, Real};
 use crate::functions::elementary::exp;
@@ -48,7 +49,7 @@ pub(super) struct FarField {
 
 /// Sums the far-far and the cross block.
 pub(super) fn sum(setting: &Setting, nodes: &Nodes, plan: &Plan, effort: &Effort) -> Result<FarField, RouteFailure> {
-    let geometry = Geometry::new(setting, nodes, plan);
+    let geometry = Geometry::new(setting, plan);
     let coefficients = geometry.coefficients(setting, plan, &geometry.start);
     let far = far_far(&geometry, &coefficients, plan, effort)?;
     let cross = cross(setting, &geometry, nodes, plan, effort)?;
@@ -75,11 +76,11 @@ struct Geometry {
 }
 
 impl Geometry {
-    fn new(setting: &Setting, nodes: &Nodes, plan: &Plan) -> Geometry {
+    fn new(setting: &Setting, plan: &Plan) -> Geometry {
         let bits = plan.bits;
-        let step = Real::from_rational(&plan.step, bits);
+        let step = plan.step_ball(bits);
         let at = |index: usize| exp(&step.mul_i64(-(index as i64), bits), bits);
-        let h = to_f64(&plan.step);
+        let h = plan.step_estimate();
         let goal = f64::from(plan.scale) * std::f64::consts::LN_2;
         let time = setting.time.to_f64();
         let (_, lambda) = far_series_length(time, (plan.near as f64 + 1.0) * h, goal);
@@ -87,10 +88,11 @@ impl Geometry {
         let one = Real::from_i64(1);
         let most = plan.series_terms.max(plan.cross_terms + outer_terms) + 2;
         let mut geometric = vec![Real::whole_line()];
-        let mut power = nodes.decay.clone();
+        let decay = exp(&step.neg(), bits);
+        let mut power = decay.clone();
         for _ in 1..=most {
             geometric.push(one.div(&one.sub(&power, bits), bits));
-            power = power.mul(&nodes.decay, bits);
+            power = power.mul(&decay, bits);
         }
         let float = |v: f64| Real::from_float(rug::Float::with_val(53, v));
         Geometry {
@@ -150,37 +152,84 @@ fn inverse_power(lambda: &Real, power: usize) -> Magnitude {
     Magnitude::ONE.div(lambda.abs_lower()).pow(power as u64)
 }
 
+/// A list of balls as integers in units of `2^-scale`.
+struct FixedList {
+    values: Vec<Integer>,
+    /// Bound of the absolute values.
+    size: Magnitude,
+    /// Bound of their errors, in units.
+    error: Magnitude,
+}
+
+impl FixedList {
+    fn new(list: &[Real], scale: u32) -> Result<FixedList, RouteFailure> {
+        let mut result =
+            FixedList { values: Vec::with_capacity(list.len()), size: Magnitude::ZERO, error: Magnitude::ZERO };
+        for ball in list {
+            let (value, error) = fixed(ball, scale)?;
+            result.size = result.size.max(ball.abs_upper());
+            result.error = result.error.max(error);
+            result.values.push(value);
+        }
+        Ok(result)
+    }
+}
+
 /// `Sum Sum v v'/(cosh + cosh)` over the far nodes.
+///
+/// `g_ij = f_ij Z^(i+j-2)/2` obeys `g_ij = a_(i-1) a_(j-1) - Z^2 g_(i-1)(j-1)`, `a_i = alpha_i Z^i`, along each diagonal.
+///
+/// **Rounding** (units `2^-s`): with `|a| <= A`, off by `e_a`, and `Z^2` off by `e_z`, every `g` is at most
+/// `A^2/(1 - Z^2) =: B` and off by at most `e_g = (2 A e_a + e_a^2 2^-s + 2 + B e_z)/(1 - Z^2 - e_z 2^-s)`. With weights
+/// `|s_i + s_j - 1/2| <= 2 S` off by `2 e_s` and `1/(1 - q^n) <= G` off by `e_c`, each of the at most `J^2/4` pairs
+/// (counted twice off the diagonal) adds at most `G (2 S e_g + 2 B e_s + 2 e_g e_s 2^-s) + 2 (S + e_s 2^-s)(B + e_g 2^-s) e_c`.
 fn far_far(geometry: &Geometry, alpha: &[Real], plan: &Plan, effort: &Effort) -> Result<Real, RouteFailure> {
-    let bits = plan.bits;
-    let most = plan.series_terms;
-    let shares = shares(geometry, most, plan);
-    let half = Real::from_i64(1).shift(-1);
-    let mut diagonals = vec![Real::zero(); most + 1];
-    let twice_start = geometry.start.shift(1);
-    let minus_square = geometry.start.square(bits).neg();
-    // G_ij = f_ij Z^(i+j-1), following each diagonal i - j = const.
+    let (bits, scale, most) = (plan.bits, plan.bits, plan.series_terms);
+    let square = geometry.start.square(bits);
+    let (minus_square, square_error) = fixed(&square.neg(), scale)?;
+    let alpha = FixedList::new(&alpha[..most], scale)?;
+    let share_balls = shares(geometry, most, plan);
+    let shares = FixedList::new(&share_balls[1..], scale)?;
+    let geometric = FixedList::new(&geometry.geometric[1..most], scale)?;
+    let half = Integer::from(1) << (scale - 1);
+    let mut diagonals = vec![Integer::new(); most + 1];
+    let mut g = Integer::new();
     for offset in 0..most - 1 {
         effort.check()?;
-        let mut g = Real::zero();
+        rug::Assign::assign(&mut g, 0);
         for i in 1.. {
             let j = i + offset;
             if i + j > most {
                 break;
             }
-            let fresh = alpha[i - 1].mul(&alpha[j - 1], bits).mul(&twice_start, bits);
-            g = fresh.add(&g.mul(&minus_square, bits), bits);
-            let weight = shares[i].add(&shares[j], bits).sub(&half, bits);
-            let term = g.mul(&weight, bits);
-            let term = if offset == 0 { term } else { term.shift(1) };
-            diagonals[i + j] = diagonals[i + j].add(&term, bits);
+            g *= &minus_square;
+            g += &alpha.values[i - 1] * &alpha.values[j - 1];
+            g >>= scale;
+            let mut weight = Integer::from(&shares.values[i - 1] + &shares.values[j - 1]);
+            weight -= &half;
+            if offset != 0 {
+                weight <<= 1;
+            }
+            diagonals[i + j] += &g * weight;
         }
     }
-    let mut total = Real::zero();
+    let mut total = Integer::new();
     for (s, diagonal) in diagonals.iter().enumerate().skip(2) {
-        total = total.add(&diagonal.mul(&geometry.geometric[s - 1], bits), bits);
+        total += diagonal * &geometric.values[s - 2];
     }
-    Ok(total)
+    let unit = Magnitude::power_of_two(-i64::from(scale));
+    let below = Real::from_i64(1).sub(&square, BOUND_BITS).abs_lower();
+    let below = below.sub_down(square_error.mul(unit));
+    let two = Magnitude::from_u64(2);
+    let (a, e_a, e_s, e_c) = (alpha.size, alpha.error, shares.error, geometric.error);
+    let bound = a.mul(a).div(below);
+    let e_g = a.mul(e_a).mul(two).add(e_a.mul(e_a).mul(unit)).add(two).add(bound.mul(square_error)).div(below);
+    let in_weights = shares.size.mul(e_g).add(bound.mul(e_s)).add(e_g.mul(e_s).mul(unit)).mul(two).mul(geometric.size);
+    let in_factors = shares.size.add(e_s.mul(unit)).mul(bound.add(e_g.mul(unit))).mul(two).mul(e_c);
+    let pairs = Magnitude::from_u64((most as u64).pow(2) / 2 + 1);
+    let error = in_weights.add(in_factors).mul(pairs).mul(unit);
+    let value = Real::from_scaled(&total, -3 * i64::from(scale)).round(bits).widen(error);
+    Ok(value.mul(&geometry.start.shift(1), bits))
 }
 
 /// `s_i` for `i = 1..=most` at index `i`.
@@ -249,7 +298,8 @@ impl Geometry {
 /// `p` is written in `u e^(-x_K)`, so its coefficients are `mu_n e^(n x_K)` and its arguments
 /// `e^(±x_k - x_K) <= 1`. With values bounded by `size = Sum |c_n|`, one Horner step errs by at most
 /// `2 size` units through its argument (off by less than two units), `2^-8` by cutting it, one by rounding down;
-/// as arguments do not exceed one, errors only add up, together with those of the coefficients.
+/// as arguments do not exceed one, errors only add up, together with those of the coefficients. Terms left out because
+/// `u^n < 2^-scale` sum to at most `size` units.
 fn cross(
     setting: &Setting,
     geometry: &Geometry,
@@ -259,7 +309,7 @@ fn cross(
 ) -> Result<Real, RouteFailure> {
     let (coefficients, errors) = cross_coefficients(setting, geometry, plan)?;
     let scale = plan.scale;
-    let arguments = arguments(geometry, nodes, plan)?;
+    let arguments = arguments(plan)?;
     let mut total = Integer::new();
     for (index, (ratio, pair)) in nodes.ratios.iter().zip(&arguments).enumerate() {
         if index % 16 == 0 {
@@ -274,7 +324,7 @@ fn cross(
     });
     let size = size.shift(-i64::from(scale));
     let each = Magnitude::from_u64(4).add(size.shift(1));
-    let steps = Magnitude::from_u64(plan.cross_terms as u64 + 1).mul(each);
+    let steps = Magnitude::from_u64(plan.cross_terms as u64 + 1).mul(each).add(size.shift(1));
     // |p| <= size, so an error e of the ratios gives 2 e size; Horner's error is weighted by r <= 1/4.
     let from_ratios = nodes.error_units.mul(size).shift(1);
     let units = steps.add(errors).add(from_ratios).mul(Magnitude::from_u64(count));
@@ -295,11 +345,19 @@ fn cross_coefficients(
     let mut power = gap.clone();
     let mut list = Vec::with_capacity(plan.cross_terms);
     let mut errors = Magnitude::ZERO;
+    let terms = geometry.outer_terms + 1;
+    let alpha = FixedList::new(&alpha[..terms], bits)?;
+    let geometric = FixedList::new(&geometry.geometric[1..plan.cross_terms + terms], bits)?;
+    // Each product errs by the usual rule; one unit for all that is below the unit.
+    let unit = Magnitude::power_of_two(-i64::from(bits));
+    let each = alpha.size.mul(geometric.error).add(geometric.size.add(geometric.error.mul(unit)).mul(alpha.error));
+    let product_error = each.mul(Magnitude::from_u64(terms as u64)).mul(unit);
     for n in 1..=plan.cross_terms {
-        let mut moment = Real::zero();
-        for (i, coefficient) in alpha.iter().enumerate().take(geometry.outer_terms + 1) {
-            moment = moment.add(&coefficient.mul(&geometry.geometric[i + n], bits), bits);
+        let mut sum = Integer::new();
+        for (coefficient, factor) in alpha.values.iter().zip(&geometric.values[n - 1..]) {
+            sum += coefficient * factor;
         }
+        let moment = Real::from_scaled(&sum, -2 * i64::from(bits)).round(bits).widen(product_error);
         let value = moment.mul(&power, bits);
         let signed = if n % 2 == 1 { value } else { value.neg() };
         let (fixed, error) = signed.to_fixed(i64::from(plan.scale)).ok_or(RouteFailure::OutOfReach {
@@ -312,34 +370,22 @@ fn cross_coefficients(
     Ok((list, errors))
 }
 
-/// `(e^(x_k - x_K), e^(-x_k - x_K))` in fixed point for the near nodes, each off by at most one unit.
-fn arguments(geometry: &Geometry, nodes: &Nodes, plan: &Plan) -> Result<Vec<(Integer, Integer)>, RouteFailure> {
-    let bits = plan.bits;
-    let one = Real::from_i64(1);
-    let lowest =
-        exp(&Real::from_rational(&plan.step, bits).mul_i64(-(plan.near as i64 - plan.first as i64), bits), bits);
-    let growth = one.div(&nodes.decay, bits);
-    let edge = one.div(&geometry.edge, bits).square(bits);
-    let mut up = lowest.clone();
-    let mut list = Vec::with_capacity(plan.near + 1 - plan.first);
-    for _ in plan.first..=plan.near {
-        let down = edge.div(&up, bits);
-        match (up.to_fixed(i64::from(plan.scale)), down.to_fixed(i64::from(plan.scale))) {
-            (Some((u, _)), Some((d, _))) => list.push((u, d)),
-            _ => {
-                let reason = "a node of the spectral sum has no finite enclosure".to_owned();
-                return Err(RouteFailure::OutOfReach { reason });
-            }
-        }
-        up = up.mul(&growth, bits);
-    }
-    Ok(list)
+/// `(e^(x_k - x_K), e^(-x_k - x_K))` in fixed point for the near nodes, each off by less than two units.
+fn arguments(plan: &Plan) -> Result<Vec<(Integer, Integer)>, RouteFailure> {
+    let powers = Powers::new(plan, plan.scale)?;
+    Ok((plan.first..=plan.near).map(|k| (powers.at(plan.near - k), powers.at(plan.near + k))).collect())
 }
 
-/// `Sum_n c_n u^n`; the argument is cut to the bits that the running value can use.
+/// `Sum_n c_n u^n`; the argument is cut to the bits that the running value can use, and terms with
+/// `u^n < 2^-scale` are left out.
 fn horner(coefficients: &[Integer], argument: &Integer, scale: u32) -> Integer {
     let mut value = Integer::new();
-    for coefficient in coefficients.iter().rev() {
+    // u < 2^-(zeros/2): twice the binary logarithm, from the leading bits.
+    let length = argument.significant_bits();
+    let leading = Integer::from(argument >> length.saturating_sub(16)).to_u32().unwrap_or(u32::MAX);
+    let zeros = 2 * scale.saturating_sub(length) + u32::from(length > 16 && leading < 46_340);
+    let needed = (2 * scale).checked_div(zeros).map_or(coefficients.len(), |terms| terms as usize + 1);
+    for coefficient in coefficients.iter().take(needed).rev() {
         value += coefficient;
         let used = value.significant_bits() + 8;
         if used < scale {

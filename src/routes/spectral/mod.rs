@@ -61,6 +61,7 @@
 //!
 //! Rounding is followed by balls and, inside the double sum, by the bound in [`near_field`].
 
+mod cone_nodes;
 mod far_field;
 mod massless;
 mod near_field;
@@ -98,7 +99,7 @@ impl Route for Spectral {
         let plan = Plan::new(problem, digits)?;
         effort.allow_bits(plan.bits)?;
         let setting = Setting::new(problem, &plan);
-        let nodes = Nodes::new(&setting, &plan, effort)?;
+        let nodes = Nodes::new(problem, &setting, &plan, effort)?;
         let near = near_field::sum(&nodes, &plan, effort)?;
         let mut sum = near;
         let mut errors = vec![
@@ -112,7 +113,7 @@ impl Route for Spectral {
         } else {
             errors.push(("right cut-off bound", setting.right_cut_error(&plan)));
         }
-        let step = Real::from_rational(&plan.step, plan.bits);
+        let step = plan.step_ball(plan.bits);
         let mut integral = sum.mul(&step.square(plan.bits), plan.bits);
         for (_, error) in &errors {
             integral = integral.widen(*error);
@@ -162,7 +163,7 @@ impl Setting {
             return Magnitude::ZERO;
         }
         let bits = BOUND_BITS;
-        let step = Real::from_rational(&plan.step, bits);
+        let step = plan.step_ball(bits);
         let one = Real::from_i64(1);
         let e = exp(&one, bits);
         let coth_1 = e.square(bits).add(&one, bits).div(&e.square(bits).sub(&one, bits), bits);
@@ -186,7 +187,7 @@ impl Setting {
     /// Bound of everything right of the last node, without the factor `exp(-2E)`.
     fn right_cut_error(&self, plan: &Plan) -> Magnitude {
         let bits = BOUND_BITS;
-        let step = Real::from_rational(&plan.step, bits);
+        let step = plan.step_ball(bits);
         let x = step.mul_i64(plan.last as i64, bits);
         let half = exp(&x.shift(-1), bits);
         let fall = self.left_root.div(&half, bits);
@@ -227,7 +228,7 @@ pub(super) fn exp_minus_upper(y: &Real) -> Magnitude {
 
 fn witness(plan: &Plan, errors: &[(&'static str, Magnitude)], integral: &Real) -> Vec<(String, String)> {
     let mut list = vec![
-        ("step h".to_owned(), plan.step.to_string()),
+        ("step h, in units of ln 2".to_owned(), plan.step.to_string()),
         ("strip half-width b".to_owned(), plan.strip.as_ref().map_or("pi/2".to_owned(), ToString::to_string)),
         ("first node".to_owned(), plan.first.to_string()),
         ("last near node".to_owned(), plan.near.to_string()),

@@ -8,8 +8,8 @@
 //! ```
 //!
 //! every term positive. For many nodes the full sum over the near block is done as one product of
-//! two big integers (the coefficients of polynomials, packed side by side):
-//! `Sum_k r_k Sum_{|l| >= first} w_|l| T_{k-l} = Sum_m T_m (r * w)_m`.
+//! two big integers (the coefficients of polynomials, packed side by side) for `k + l`, and one with the order of
+//! the `w` reversed for `k - l`.
 //!
 //! **Rounding.** Let all `w`, `r` be off by at most `e` units of `u = 2^-scale` and all `T` by at most
 //! two units, `w, r <= 1/4`, `T <= 1`. Integer products and sums are exact, so with `n` nodes the bracket, a sum
@@ -26,7 +26,7 @@ use rug::integer::Order;
 
 /// The near sum (without `h^2`) as a ball.
 pub(super) fn sum(nodes: &Nodes, plan: &Plan, effort: &Effort) -> Result<Real, RouteFailure> {
-    let table = Tangents::new(nodes, plan, effort)?;
+    let table = Tangents::new(plan, effort)?;
     let total = if plan.near.saturating_sub(plan.first) >= PRODUCT_FROM {
         by_product(nodes, plan, &table, effort)?
     } else {
@@ -48,16 +48,16 @@ struct Tangents {
 }
 
 impl Tangents {
-    fn new(nodes: &Nodes, plan: &Plan, effort: &Effort) -> Result<Tangents, RouteFailure> {
+    fn new(plan: &Plan, effort: &Effort) -> Result<Tangents, RouteFailure> {
         let span = plan.last - plan.first;
         let offset = 2 * plan.first;
         let top = plan.last + plan.near;
         if offset <= span + 1 {
             // One table serves both ranges.
-            return Ok(Tangents { small: run(nodes, plan, 0, top, effort)?, large: Vec::new(), offset: 0 });
+            return Ok(Tangents { small: run(plan, 0, top, effort)?, large: Vec::new(), offset: 0 });
         }
-        let small = run(nodes, plan, 0, span, effort)?;
-        Ok(Tangents { small, large: run(nodes, plan, offset, top, effort)?, offset })
+        let small = run(plan, 0, span, effort)?;
+        Ok(Tangents { small, large: run(plan, offset, top, effort)?, offset })
     }
 
     fn at(&self, index: usize) -> &Integer {
@@ -74,18 +74,17 @@ impl Tangents {
 /// `q^m` is kept with 32 extra bits: its error after `n` steps is at most `n + 1` of the small units (each
 /// step adds at most one and shrinks what it has), so `T_m`, with derivative at most two in `q^m` and one
 /// rounding down, is off by less than two units of `2^-scale` for fewer than `2^30` steps.
-fn run(nodes: &Nodes, plan: &Plan, from: usize, to: usize, effort: &Effort) -> Result<Vec<Integer>, RouteFailure> {
+fn run(plan: &Plan, from: usize, to: usize, effort: &Effort) -> Result<Vec<Integer>, RouteFailure> {
     let fine = plan.scale + 32;
     let one = Integer::from(1) << fine;
     let bits = plan.bits + 64;
-    let step = Real::from_rational(&plan.step, bits);
+    let step = plan.step_ball(bits);
     let start = crate::functions::elementary::exp(&step.mul_i64(-(from as i64), bits), bits);
     let decay = crate::functions::elementary::exp(&step.neg(), bits);
     let broken = || RouteFailure::OutOfReach { reason: "the step of the spectral sum is not finite".to_owned() };
     let (mut power, _) = start.to_fixed(i64::from(fine)).ok_or_else(broken)?;
     let (factor, _) = decay.to_fixed(i64::from(fine)).ok_or_else(broken)?;
     let mut table = Vec::with_capacity(to - from + 1);
-    let _ = nodes;
     for index in from..=to {
         if index % 64 == 0 {
             effort.check()?;
@@ -136,22 +135,18 @@ fn by_product(nodes: &Nodes, plan: &Plan, table: &Tangents, effort: &Effort) -> 
     // Each coefficient of the product is below near * 2^(2 scale - 4), so 64-bit aligned slots never overlap.
     let slot = (2 * plan.scale as usize + 64).div_ceil(64);
     let ratios = pack(nodes.ratios[..near].iter(), slot);
-    effort.check()?;
-    // Index of l: from -near_index to +near_index, first the mirrored part, then a gap, then the weights.
-    let gap = 2 * plan.first - 1;
-    let mirrored = nodes.weights[..near].iter().rev();
-    let zero = Integer::new();
-    let zeros = std::iter::repeat_n(&zero, gap);
-    let weights = pack(mirrored.chain(zeros).chain(nodes.weights[..near].iter()), slot);
-    let product = unpack(&(ratios * weights), slot);
-    effort.check()?;
-    // Coefficient j belongs to m = k + l with k = first + i, l = j' - near_last.
-    let base = plan.first as i64 - plan.near as i64;
     let mut total = Integer::new();
-    for (index, coefficient) in product.iter().enumerate() {
-        let m = base + index as i64;
-        let tangent = table.at(m.unsigned_abs() as usize);
-        if m < 0 { total -= coefficient * tangent } else { total += coefficient * tangent }
+    for (weights, base) in [
+        // Coefficient j of the first product belongs to k + l = 2 first + j, of the second to k - l = j + first - near.
+        (pack(nodes.weights[..near].iter(), slot), 2 * plan.first as i64),
+        (pack(nodes.weights[..near].iter().rev(), slot), plan.first as i64 - plan.near as i64),
+    ] {
+        effort.check()?;
+        for (index, coefficient) in unpack(&(&ratios * weights), slot).iter().enumerate() {
+            let m = base + index as i64;
+            let tangent = table.at(m.unsigned_abs() as usize);
+            if m < 0 { total -= coefficient * tangent } else { total += coefficient * tangent }
+        }
     }
     total += outer_rows(nodes, plan, table, effort)?;
     Ok(total)

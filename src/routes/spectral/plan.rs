@@ -3,6 +3,8 @@
 //! Nothing here decides containment: a bad choice makes the interval wide, never wrong, because all
 //! error bounds are evaluated afterwards for whatever was chosen.
 
+use crate::arithmetic::{Bits, Real};
+use crate::functions::elementary::ln_2;
 use crate::routes::estimate::{bisect, dyadic, log_probability, proper_distance};
 use crate::routes::{RouteFailure, TailProblem};
 use rug::Rational;
@@ -15,7 +17,7 @@ pub(super) const PRODUCT_FROM: usize = 220;
 
 /// All choices for one evaluation.
 pub(super) struct Plan {
-    /// Step `h`, a dyadic rational.
+    /// Step `h` as a multiple of `ln 2`: `1/p` with an integer `p` at the cone, else a dyadic rational.
     pub step: Rational,
     /// Half-width of the strip of analyticity used; `None` stands for `pi/2`.
     pub strip: Option<Rational>,
@@ -51,19 +53,37 @@ impl Plan {
         }
         // S exp(2E) = P exp(2E) pi^2 a / 4.
         let size = log_probability(a, t, d) + 2.0 * proper_distance(t, d) + (PI * PI * a / 4.0).ln();
-        let goal = f64::from(digits) * LN_10 - size.min(0.0) + 5.0;
-        let (step, strip) = choose_step(a, proper_distance(t, d), goal);
-        let mut plan = if d == 0.0 { at_cone(a, t, goal, step) } else { beyond(t, d, goal, step)? };
+        let goal = f64::from(digits) * LN_10 - size.min(0.0) + 2.5;
+        let (width, strip) = choose_step(a, proper_distance(t, d), goal);
+        let mut plan = if d == 0.0 { at_cone(a, t, goal, width) } else { beyond(t, d, goal, width)? };
         plan.strip = strip.map(|b| dyadic(b, 30));
         let count = (plan.last - plan.first + 1) as f64;
         if count > MAX_NODES {
             return Err(out_of_reach("the spectral sum would need too many nodes"));
         }
-        plan.scale = (goal / LN_2 + 2.0 * count.log2() + 6.0) as u32;
+        plan.scale = (goal / LN_2 + 2.0 * count.log2() + 6.0).max(48.0) as u32;
         // Exponents of size up to E lose log2(E) bits; huge times and widths lose a few more.
         let spread = proper_distance(t, d).max(1.0).log2() + (1.0 + t).log2().max(0.0) + 2.0 * count.log2();
         plan.bits = (f64::from(plan.scale) + spread + 16.0) as u32;
         Ok(plan)
+    }
+}
+
+impl Plan {
+    /// The step as a ball.
+    pub(super) fn step_ball(&self, bits: Bits) -> Real {
+        let ratio = Real::from_rational(&self.step, bits);
+        ratio.mul(&ln_2(bits), bits)
+    }
+
+    /// The step in double precision.
+    pub(super) fn step_estimate(&self) -> f64 {
+        to_f64(&self.step) * LN_2
+    }
+
+    /// Number of steps in `ln 2`, for a region that begins at the cone.
+    pub(super) fn octave_parts(&self) -> usize {
+        self.step.denom().to_usize().unwrap_or(usize::MAX)
     }
 }
 
@@ -72,7 +92,7 @@ fn out_of_reach(reason: &str) -> RouteFailure {
 }
 
 /// The largest step for which Theorem C reaches `exp(-goal)`, with the strip that allows it.
-fn choose_step(a: f64, distance: f64, goal: f64) -> (Rational, Option<f64>) {
+fn choose_step(a: f64, distance: f64, goal: f64) -> (f64, Option<f64>) {
     let wide = (a * 1f64.cosh()).max(1.0 / 1f64.tanh());
     let step_for = |b: f64, constant: f64| 2.0 * PI * b / (goal + (5.0 * constant).ln() + distance * (1.0 - b.cos()));
     let mut best = (step_for(FRAC_PI_2, wide), None);
@@ -83,18 +103,19 @@ fn choose_step(a: f64, distance: f64, goal: f64) -> (Rational, Option<f64>) {
             best = (step, Some(b));
         }
     }
-    (dyadic(best.0, 24), best.1)
+    best
 }
 
 /// Nodes and series for a region that begins at the cone.
-fn at_cone(a: f64, t: f64, goal: f64, step: Rational) -> Plan {
-    let h = to_f64(&step);
+fn at_cone(a: f64, t: f64, goal: f64, width: f64) -> Plan {
+    let parts = (LN_2 / width).ceil().clamp(1.0, 1e9);
+    let (step, h) = (Rational::from((1, parts as u32)), LN_2 / parts);
     let first = ((t / goal).ln() / h).floor().max(1.0);
     // Beyond this rapidity the two vanishing exponentials are negligible and t e^-x is below one.
     let near = (goal / t.min(a)).ln().max(t.ln()).max(1.0);
     let near_nodes = (near / h).ceil();
     // Extra nodes make the cross series short: balance their number against its terms.
-    let extra = (3.0 + 0.02 * goal).min(9.0);
+    let extra = 2.5 + 0.005 * goal;
     let last = ((near + extra) / h).ceil();
     let ratio = (last + 1.0 - near_nodes) * h;
     let cross_terms = ((goal + 6.0) / ratio).ceil() + 2.0;
@@ -132,8 +153,9 @@ pub(super) fn far_series_length(t: f64, x: f64, goal: f64) -> (usize, f64) {
 }
 
 /// Nodes for a region that begins beyond the cone.
-fn beyond(t: f64, d: f64, goal: f64, step: Rational) -> Result<Plan, RouteFailure> {
-    let h = to_f64(&step);
+fn beyond(t: f64, d: f64, goal: f64, width: f64) -> Result<Plan, RouteFailure> {
+    let step = dyadic(width / LN_2, 24);
+    let h = to_f64(&step) * LN_2;
     let (fall, rise) = ((t + d / 2.0).sqrt(), (d / 2.0).sqrt());
     let exponent = |x: f64| (fall * (-x / 2.0).exp() - rise * (x / 2.0).exp()).powi(2);
     let centre = (fall / rise).ln();
