@@ -1,5 +1,7 @@
 //! The K functions: independent methods against each other, identities, tables, balls.
 
+#![allow(clippy::unwrap_used)]
+
 use coneproof::arithmetic::{Bits, Complex, ExactInput, Magnitude, Real};
 use coneproof::functions::bessel_k::{self, Method};
 use proptest::prelude::*;

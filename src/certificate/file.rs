@@ -93,6 +93,9 @@ fn temporary_beside(destination: &Path) -> io::Result<NamedTempFile> {
 
 fn write_and_rename(destination: &Path, content: &[u8]) -> io::Result<()> {
     let mut file = temporary_beside(destination)?;
+    if let Ok(older) = fs::metadata(destination) {
+        file.as_file().set_permissions(older.permissions())?;
+    }
     file.write_all(content)?;
     file.as_file().sync_all()?;
     file.persist(destination).map_err(|error| error.error)?;

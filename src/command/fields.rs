@@ -7,7 +7,7 @@ use rug::Rational;
 use std::time::Duration;
 
 /// Largest limit on bits that is accepted.
-const MAX_BITS: u32 = 100_000_000;
+const MAX_BITS: u32 = 20_000_000;
 /// Longest time limit in seconds that is accepted, about 30 years.
 const MAX_SECONDS: u32 = 1_000_000_000;
 

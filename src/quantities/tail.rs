@@ -16,6 +16,12 @@ use std::time::{Duration, Instant};
 /// Largest number of digits that can be asked for.
 pub const MAX_DIGITS: u32 = 10_000;
 
+/// Largest working precision unless a request states another: tails of 1e-2000000 need less, and
+/// what needs more would fill the memory of a small machine.
+pub const DEFAULT_MAX_BITS: Bits = 4_000_000;
+/// Largest number of bits of an input's numerator or denominator.
+const MAX_INPUT_BITS: u32 = 100_000;
+
 /// Which side of the packet counts.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Side {
@@ -86,7 +92,7 @@ pub struct TailRequest {
     pub digits: u32,
     /// Which routes run.
     pub routes: RouteChoice,
-    /// Largest working precision in bits.
+    /// Largest working precision in bits; `None` stands for [`DEFAULT_MAX_BITS`].
     pub max_bits: Option<Bits>,
     /// Longest time to spend.
     pub time_limit: Option<Duration>,
@@ -177,11 +183,16 @@ impl TailRequest {
     /// # Errors
     /// [`Error::BadInput`] naming the first field that cannot be used.
     pub fn validate(&self) -> Result<(), Error> {
+        check_size("half-width", self.packet.half_width())?;
+        check_size("mass", &self.mass)?;
+        check_size("time", &self.time)?;
+        self.beyond.as_ref().map_or(Ok(()), |region| check_size("beyond", region))?;
         if *self.mass.lower() < 0 {
             return Err(Error::bad_input("mass", self.mass.text(), "give a mass that is not negative, such as 0 or 1"));
         }
         if self.digits == 0 || self.digits > MAX_DIGITS {
-            return Err(Error::bad_input("digits", self.digits, "give a whole number from 1 to 10000"));
+            let wanted = format!("give a whole number from 1 to {MAX_DIGITS}");
+            return Err(Error::bad_input("digits", self.digits, &wanted));
         }
         if self.max_bits.is_some_and(|bits| bits < 64) {
             let was = self.max_bits.unwrap_or(0);
@@ -207,26 +218,59 @@ impl TailRequest {
     pub fn certify(&self) -> Result<TailResult, Error> {
         self.validate()?;
         let start = Instant::now();
-        let mut result = tail_range::certify(self)?;
+        let (interval, mut routes) = tail_range::enclose(self)?;
+        let mut interval = as_probability(&interval)?;
+        for route in &mut routes {
+            route.interval = route.interval.as_ref().map(as_probability).transpose()?;
+        }
         if self.side != Side::Both {
             // Both sides are equal: |psi(x,t)| = |psi(-x,t)| for the real even packet.
-            result.interval = halve(&result.interval);
-            for route in &mut result.routes {
+            interval = halve(&interval);
+            for route in &mut routes {
                 route.interval = route.interval.as_ref().map(halve);
             }
         }
-        result.digits = result.interval.relative_digits(self.digits);
-        result.status =
-            if result.interval.has_relative_digits(self.digits) { Status::Certified } else { Status::FewerDigits };
-        result.value = decimal::guaranteed_decimal(&result.interval, self.digits);
-        result.seconds = start.elapsed().as_secs_f64();
-        Ok(result)
+        let certified = interval.has_relative_digits(self.digits);
+        Ok(TailResult {
+            value: decimal::guaranteed_decimal(&interval, self.digits),
+            digits: interval.relative_digits(self.digits),
+            status: if certified { Status::Certified } else { Status::FewerDigits },
+            notes: self.notes(&routes, certified),
+            interval,
+            routes,
+            seconds: start.elapsed().as_secs_f64(),
+        })
+    }
+
+    /// What a reader should know beside the numbers.
+    fn notes(&self, routes: &[RouteReport], certified: bool) -> Vec<String> {
+        let note = if routes.is_empty() {
+            "at time zero the packet lies inside its box: the probability is exactly zero"
+        } else if routes.iter().all(|route| route.interval.is_none()) {
+            "no route has bounds: all that is known is that a probability lies between 0 and 1"
+        } else if !certified && routes.iter().all(|route| route.note.is_none()) {
+            "the width of the inputs limits the digits"
+        } else {
+            return Vec::new();
+        };
+        vec![note.to_owned()]
     }
 
     /// The effort limits, counted from now.
     pub(super) fn effort(&self) -> Effort {
-        Effort { max_bits: self.max_bits, deadline: self.time_limit.map(|limit| Instant::now() + limit) }
+        let max_bits = Some(self.max_bits.unwrap_or(DEFAULT_MAX_BITS));
+        Effort { max_bits, deadline: self.time_limit.and_then(|limit| Instant::now().checked_add(limit)) }
     }
+}
+
+/// Exact arithmetic on numbers of a million digits would take minutes.
+fn check_size(field: &str, input: &ExactInput) -> Result<(), Error> {
+    let small = |end: &Rational| end.numer().significant_bits().max(end.denom().significant_bits()) <= MAX_INPUT_BITS;
+    if small(input.lower()) && small(input.upper()) {
+        return Ok(());
+    }
+    let wanted = "give a number with at most 30000 digits before and behind the point, between 1e-30000 and 1e30000";
+    Err(Error::bad_input(field, input.text(), wanted))
 }
 
 /// An exact number for a sentence: as a fraction if that is short, else rounded up.
@@ -237,9 +281,18 @@ fn readable(value: &Rational) -> String {
     decimal::upper_decimal(&rounding::up(128, value), 17)
 }
 
+/// The part of an enclosure that can be a probability.
+fn as_probability(interval: &Interval) -> Result<Interval, Error> {
+    let unit = Interval::new(Float::new(64), Float::with_val(64, 1));
+    let found = || format!("the enclosure [{}, {}] of a probability", interval.lower(), interval.upper());
+    interval.intersection(&unit).ok_or_else(|| Error::Internal { found: found() })
+}
+
 /// Exact half of an interval.
 fn halve(interval: &Interval) -> Interval {
-    Interval::new(interval.lower().clone() >> 1u32, interval.upper().clone() >> 1u32)
+    let (lower, upper) = (interval.lower(), interval.upper());
+    // Exact but for underflow, which has to go outward too.
+    Interval::new(rounding::down(lower.prec(), lower >> 1u32), rounding::up(upper.prec(), upper >> 1u32))
 }
 
 /// The exactly scaled problem for exact inputs; `None` when the time is zero, where the
@@ -277,7 +330,14 @@ pub(super) fn run_routes(
         RouteChoice::Spectral => vec![&spectral::SPECTRAL],
         RouteChoice::Both => vec![&kernel::KERNEL, &spectral::SPECTRAL],
     };
-    let reports: Vec<RouteReport> = chosen.into_iter().map(|route| drive(route, problem, digits, effort)).collect();
+    let mut reports = Vec::with_capacity(chosen.len());
+    for (index, route) in chosen.iter().enumerate() {
+        let share = effort.deadline.map(|deadline| share_of_time(deadline, chosen.len() - index));
+        reports.push(match below_arithmetic(problem) {
+            true => report(*route, None, Some(BELOW_ARITHMETIC.to_owned()), Duration::ZERO),
+            false => drive(*route, problem, digits, &Effort { deadline: share, ..*effort }),
+        });
+    }
     let mut meeting: Option<Interval> = None;
     for interval in reports.iter().filter_map(|report| report.interval.as_ref()) {
         meeting = Some(match meeting {
@@ -288,6 +348,23 @@ pub(super) fn run_routes(
     // With no route at all, a probability still lies between zero and one.
     let unknown = || Interval::new(Float::new(64), Float::with_val(64, 1));
     Ok((meeting.unwrap_or_else(unknown), reports))
+}
+
+/// Why a route does not run.
+const BELOW_ARITHMETIC: &str = "the probability is below 1e-300000000, outside the range of the arithmetic";
+
+/// Whether `exp(-2E)`, `E^2 = d (d + 2t)`, is below the smallest binary number: the exponents of
+/// MPFR's numbers reach down to `-2^30` by default, and `2 * 3.7e8 / ln 2` is just under `2^30`.
+fn below_arithmetic(problem: &TailProblem) -> bool {
+    let (t, d) = (&problem.time, &problem.distance);
+    !problem.massless && (d + Rational::from(t * 2)) * d > Rational::from(370_000_000u64).square()
+}
+
+/// The moment at which the next one of several routes has to stop, so that each gets its share.
+fn share_of_time(deadline: Instant, routes: usize) -> Instant {
+    let left = deadline.saturating_duration_since(Instant::now());
+    let share = u32::try_from(routes).map_or(left, |routes| left / routes.max(1));
+    deadline.checked_sub(left - share).unwrap_or(deadline)
 }
 
 fn disagreement(reports: &[RouteReport]) -> Error {
@@ -346,8 +423,10 @@ fn evaluate_within(
     loop {
         match route.evaluate(problem, goal, effort) {
             Err(RouteFailure::BitLimit { needed }) if goal > 1 => {
+                // Bits grow by at most needed / goal for each digit, so this never gives up too much.
                 let excess = needed.saturating_sub(effort.max_bits.unwrap_or(needed));
-                goal = goal.saturating_sub((f64::from(excess) * std::f64::consts::LOG10_2) as u32 + 1).max(1);
+                let digits = u64::from(excess) * u64::from(goal) / u64::from(needed.max(1));
+                goal = goal.saturating_sub(u32::try_from(digits).unwrap_or(goal).max(1)).max(1);
                 cut = true;
             }
             Err(failure) => return Err(failure),

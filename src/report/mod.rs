@@ -108,9 +108,11 @@ impl DecimalBounds {
     }
 
     fn rounded(interval: &Interval, digits: u32) -> DecimalBounds {
+        // Nothing but 0 <= P <= 1 is known: no digits that look like a measurement.
+        let upper = if *interval.upper() == 1 { 1 } else { digits };
         DecimalBounds {
             lower: decimal::lower_decimal(interval.lower(), digits),
-            upper: decimal::upper_decimal(interval.upper(), digits),
+            upper: decimal::upper_decimal(interval.upper(), upper),
         }
     }
 
@@ -234,7 +236,7 @@ mod tests {
     #[test]
     fn an_unknown_probability_stays_readable() {
         let bounds = DecimalBounds::new(&Interval::new(Float::new(64), Float::with_val(64, 1)), 15);
-        assert_eq!((bounds.lower.as_str(), bounds.upper.as_str()), ("0", "1.0000"));
+        assert_eq!((bounds.lower.as_str(), bounds.upper.as_str()), ("0", "1"));
         assert!(!bounds.has_relative_digits(1));
     }
 }

@@ -13,9 +13,18 @@ use crate::scout;
 use clap::{Args, Subcommand, ValueEnum};
 use std::path::PathBuf;
 
+const AFTER_HELP: &str = concat!(
+    "\
+Example:
+  coneproof tail box --half-width 1 --mass 1 --time 1 --digits 30
+
+",
+    exit_codes!()
+);
+
 /// `coneproof tail`.
 #[derive(Args)]
-#[command(arg_required_else_help = false)]
+#[command(arg_required_else_help = false, after_help = AFTER_HELP)]
 pub(super) struct TailCommand {
     #[command(subcommand)]
     packet: PacketCommand,
@@ -36,10 +45,11 @@ struct TailArguments {
     /// Time since the packet was released, of either sign
     #[arg(long, value_name = "T", allow_hyphen_values = true)]
     time: Option<String>,
-    /// Relative digits: upper - lower <= 10^-D * lower
+    /// Relative digits, 1 to 10000: upper - lower <= 10^-D * lower
     #[arg(long, value_name = "D", default_value = "15", allow_hyphen_values = true)]
     digits: String,
-    /// Distance from the origin beyond which the particle is found; "cone" is half-width + |time|
+    /// Distance from the origin beyond which the particle is found, half-width + |time| or more;
+    /// "cone" is half-width + |time|
     #[arg(long, value_name = "R|cone", default_value = "cone", allow_hyphen_values = true)]
     beyond: String,
     /// Which side counts
@@ -48,7 +58,7 @@ struct TailArguments {
     /// Which of the two unrelated computations runs; with both, their intervals must meet
     #[arg(long, value_enum, value_name = "ROUTE", default_value = "both")]
     route: RouteName,
-    /// Largest working precision in bits
+    /// Largest working precision in bits, 64 to 20000000 [default: 4000000]
     #[arg(long, value_name = "N", allow_hyphen_values = true)]
     max_bits: Option<String>,
     /// Longest time to spend, in seconds; past it the best proven interval is printed
