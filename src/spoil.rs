@@ -24,6 +24,8 @@ pub enum Fault {
     BesselSeriesCut = 7,
     /// The power series of the dilogarithm is cut too early, without its tail bound.
     DilogarithmSeriesCut = 8,
+    /// What lies beyond the last node of the spectral sum of a general packet is left out of the bounds.
+    CutOffForgotten = 9,
 }
 
 #[cfg(feature = "spoil")]

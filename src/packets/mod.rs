@@ -4,5 +4,9 @@
 //! how probabilities are computed.
 
 pub mod box_packet;
+pub mod bspline;
+pub mod waves;
 
 pub use box_packet::BoxPacket;
+pub use bspline::BSplinePacket;
+pub use waves::{ExactComplex, WavePacket};
