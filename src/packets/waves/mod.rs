@@ -157,10 +157,10 @@ impl WavePacket {
             }
             list
         };
-        let waves = self.waves.iter().map(|wave| Wave {
-            number: wave.number.times(&inverse),
-            pieces: wave.pieces.iter().map(scale).collect(),
-        });
+        let waves = self
+            .waves
+            .iter()
+            .map(|wave| Wave { number: wave.number.times(&inverse), pieces: wave.pieces.iter().map(scale).collect() });
         WavePacket {
             waves: waves.collect(),
             knots: self.knots.iter().map(|knot| Rational::from(knot * factor)).collect(),
@@ -174,7 +174,10 @@ impl WavePacket {
             number: wave.number.neg(),
             pieces: wave.pieces.iter().zip(&lengths).rev().map(|(piece, length)| mirrored(piece, length)).collect(),
         });
-        WavePacket { waves: waves.collect(), knots: self.knots.iter().rev().map(|knot| Rational::from(-knot)).collect() }
+        WavePacket {
+            waves: waves.collect(),
+            knots: self.knots.iter().rev().map(|knot| Rational::from(-knot)).collect(),
+        }
     }
 
     /// The packet `conj psi0(x)`.
@@ -208,7 +211,7 @@ impl WavePacket {
     /// Whether certainly `psi0(-x) = conj psi0(x)` or `psi0(-x) = -conj psi0(x)`, about the middle if there is no wave:
     /// then both sides outside the cone have the same probability.
     pub fn is_symmetric(&self) -> bool {
-        let back = Rational::from(-self.centre());
+        let back = -self.centre();
         let centred = self.translated(&back).unwrap_or_else(|_| self.clone());
         let (left, right) = (centred.mirrored(), centred.conjugate());
         left.equals(&right, false) || left.equals(&right, true)

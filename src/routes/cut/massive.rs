@@ -61,6 +61,9 @@ use std::f64::consts::{FRAC_PI_2, LN_2, PI};
 /// More nodes than this are refused.
 pub(super) const MAX_NODES: f64 = 60_000.0;
 
+/// From this many nodes on, the double sum is done by one big-integer product.
+const PRODUCT_FROM: usize = 64;
+
 /// What the bounds need, in few bits.
 struct Sizes {
     /// `V/W`
@@ -252,15 +255,23 @@ impl Sizes {
         let right = coarse_bisect(low, high, h, enough);
         let (first, last) = ((left / h).floor().max(1.0), (right / h).ceil() + 1.0);
         let count = last - first + 1.0;
-        if count > MAX_NODES {
+        if count.is_nan() || count > MAX_NODES {
             let reason = format!("the spectral sum would need {count:.0} nodes, more than {MAX_NODES:.0}");
             return Err(RouteFailure::OutOfReach { reason });
         }
         let scale = (goal / LN_2 + 2.0 * count.log2() + 8.0).max(48.0);
-        // Exponents of size up to E lose log2(E) bits; huge times lose a few more.
-        let bits = scale + distance.max(1.0).log2() + (1.0 + t).log2() + 24.0;
+        // Exponents of size up to E lose log2(E) bits, huge times a few more, the recurrence of the nodes their number.
+        let bits = scale + distance.max(1.0).log2() + (1.0 + t).log2() + count.log2() + 20.0;
         let (first, last) = (first as usize, last as usize);
-        let lattice = Lattice { step, first, near: last, last, bits: bits as u32, scale: scale as u32 };
+        let lattice = Lattice {
+            step,
+            first,
+            near: last,
+            last,
+            bits: bits as u32,
+            scale: scale as u32,
+            product_from: PRODUCT_FROM,
+        };
         Ok(Plan { lattice, strip: strip.map(|b| dyadic(b, 30)) })
     }
 
@@ -316,11 +327,11 @@ impl Nodes {
             error_units: Magnitude::ZERO,
             count: if amplitude.is_real() { 1 } else { 2 },
         };
-        let mut tables = Tables::new(amplitude, problem, lattice.bits)?;
+        let mut tables = Tables::new(amplitude, problem, lattice, lattice.bits)?;
         for k in lattice.first..=lattice.last {
             effort.check()?;
             loop {
-                let (weight, ratio) = tables.weight(lattice, sizes, k);
+                let (weight, ratio) = tables.weight(sizes, k);
                 let scale = i64::from(lattice.scale);
                 let radius = weight.re.radius().max(weight.im.radius()).shift(scale).log2_estimate();
                 // Cancellation inside the amplitude is met with more bits, within reason.
@@ -328,7 +339,7 @@ impl Nodes {
                     let missing = if radius.is_finite() { radius.min(1e6) as u32 } else { tables.bits };
                     let more = (tables.bits + missing + 32).max(tables.bits + tables.bits / 4);
                     effort.allow_bits(more)?;
-                    tables = Tables::new(amplitude, problem, more)?;
+                    tables = Tables::new(amplitude, problem, lattice, more)?;
                     continue;
                 }
                 nodes.push(&weight, &ratio, scale)?;
@@ -369,23 +380,48 @@ struct Tables {
     amplitude: Box<dyn PreparedAmplitude>,
     place: Place,
     at_cone: bool,
+    /// `h/2`
+    half_step: Real,
+    /// `e^(h/2)`
+    growth: Real,
+    /// `e^(kh/2)` at the node reached.
+    half: Option<(usize, Real)>,
 }
 
 impl Tables {
-    fn new(amplitude: &dyn CutAmplitude, problem: &Problem, bits: Bits) -> Result<Tables, RouteFailure> {
+    fn new(
+        amplitude: &dyn CutAmplitude,
+        problem: &Problem,
+        lattice: &Lattice,
+        bits: Bits,
+    ) -> Result<Tables, RouteFailure> {
+        let half_step = lattice.step_ball(bits + 32).shift(-1);
         Ok(Tables {
             bits,
             amplitude: amplitude.prepare(bits)?,
             place: Place::new(problem, bits),
             at_cone: problem.distance == 0,
+            growth: exp(&half_step, bits),
+            half_step,
+            half: None,
         })
     }
 
+    /// `e^(kh/2)`, by a product from the node before.
+    fn half_power(&mut self, index: usize) -> Real {
+        let value = match &self.half {
+            Some((at, value)) if *at == index => value.clone(),
+            Some((at, value)) if at + 1 == index => value.mul(&self.growth, self.bits),
+            _ => exp(&self.half_step.mul_i64(index as i64, self.bits + 32), self.bits),
+        };
+        self.half = Some((index, value.clone()));
+        value
+    }
+
     /// `w` and `w/(2 sinh x)` at the node, in units of `W`.
-    fn weight(&self, lattice: &Lattice, sizes: &Sizes, index: usize) -> (Complex, Complex) {
+    fn weight(&mut self, sizes: &Sizes, index: usize) -> (Complex, Complex) {
         let bits = self.bits;
-        let x = lattice.step_ball(bits + 32).mul_i64(index as i64, bits + 32);
-        let half = exp(&x.shift(-1), bits);
+        let half = self.half_power(index);
         let whole = half.square(bits);
         let inverse = Real::from_i64(1).div(&whole, bits);
         let sinh = whole.sub(&inverse, bits).shift(-1);

@@ -17,9 +17,9 @@
 //! values) and are used as they are ([`Bounds`]).
 //!
 //! **Right end.** Beyond the last node, at `u_K = e^X >= 1`, let `|w| <= U exp(-D u_K)`, `U = min(1/2, tail/(2V))` by the packet's
-//! tail bound. For `k > K`, `h Sum_l |w_l|/(u_k + u_l) <= (1 + h)/u_k + (x_k + h)/u_k + (1 + h)/u_k`: nodes with `u_l <= 1`, where `|w_l| <= u_l`
-//! and `h Sum u_l <= h/(1 - e^-h) <= 1 + h`; with `1 < u_l <= u_k`; and above, where `h Sum 1/u_l <= (1 + h)/u_k`. As `(x + 2 + 3h) e^-x` falls, pairs
-//! with a node beyond add at most `2 U exp(-D u_K) Int_X^inf (x + 2 + 3h) e^-x dx = 2 U exp(-D u_K) (X + 3 + 3h) e^-X`.
+//! tail bound. For `k > K`, `h Sum_l |w_l|/(u_k + u_l) <= (1 + h)/u_k + x_k/u_k + 1/u_k`: nodes with `u_l <= 1`, where `|w_l| <= u_l`
+//! and `h Sum u_l <= h/(1 - e^-h) <= 1 + h`; with `1 < u_l <= u_k`, where there are `x_k/h`; and above, where `h Sum 1/u_l <= 1/u_k`. As `(x + 2 + h) e^-x` falls, pairs
+//! with a node beyond add at most `2 U exp(-D u_K) Int_X^inf (x + 2 + h) e^-x dx = 2 U exp(-D u_K) (X + 3 + h) e^-X`.
 //!
 //! # Sum
 //!
@@ -132,7 +132,7 @@ impl Setting {
         let x = step.mul_i64(plan.last, bits);
         let distance = Real::from_rational(&self.equivalent.distance, bits);
         let exponent = distance.mul(&exp(&x, bits), bits).add(&x, bits);
-        let factor = x.add(&Real::from_i64(3), bits).add(&step.mul_i64(3, bits), bits);
+        let factor = x.add(&Real::from_i64(3), bits).add(&step, bits);
         factor.mul(&exp(&exponent.neg(), bits), bits).abs_upper().shift(1).mul(self.tail_weight(&x))
     }
 
@@ -173,12 +173,12 @@ impl Setting {
         let left = -0.5 * (goal + ln(bounds.weighted_majorant()) + time.ln() + (1.0 + 2.0 * h).ln());
         let enough = |x: f64| {
             let weight = ln(self.tail_weight(&Real::from_float(rug::Float::with_val(53, x))));
-            weight + (2.0 * (x + 3.0 + 3.0 * h)).ln() - x - distance * x.exp() < -goal
+            weight + (2.0 * (x + 3.0 + h)).ln() - x - distance * x.exp() < -goal
         };
         let right = coarse_bisect(0.0, goal + (goal + 6.0).ln() + 3.0, h, enough);
         let (first, last) = ((left / h).floor(), (right / h).ceil() + 1.0);
         let count = last - first + 1.0;
-        if count > MAX_NODES {
+        if count.is_nan() || count > MAX_NODES {
             let reason = format!("the massless spectral sum would need {count:.0} nodes, more than {MAX_NODES:.0}");
             return Err(RouteFailure::OutOfReach { reason });
         }
@@ -237,7 +237,8 @@ impl Setting {
         let u = half.square(bits);
         let kappa = u.mul(&Real::from_rational(&self.unit, bits), bits);
         let time = Real::from_rational(&self.equivalent.time, bits);
-        let mut base = one_minus_exp(&time.mul(&u, bits).shift(1), bits, bits).div(&half, bits).shift(-1 - self.exponent);
+        let mut base =
+            one_minus_exp(&time.mul(&u, bits).shift(1), bits, bits).div(&half, bits).shift(-1 - self.exponent);
         if self.equivalent.distance != 0 {
             let distance = Real::from_rational(&self.equivalent.distance, bits);
             base = base.mul(&exp(&distance.mul(&u, bits).neg(), bits), bits);

@@ -18,7 +18,11 @@ use crate::functions::complex_elementary::whole_plane;
 /// The moments `0..=degree`; `decay` is `exp(-c l)`.
 pub(super) fn moments(c: &Complex, length: &Real, decay: &Complex, degree: usize, bits: Bits) -> Vec<Complex> {
     let reach = c.re.to_f64().hypot(c.im.to_f64()) * length.to_f64();
-    if reach > degree as f64 + 2.0 { forward(c, length, decay, degree, bits) } else { backward(c, length, decay, degree, bits) }
+    if reach > degree as f64 + 2.0 {
+        forward(c, length, decay, degree, bits)
+    } else {
+        backward(c, length, decay, degree, bits)
+    }
 }
 
 fn forward(c: &Complex, length: &Real, decay: &Complex, degree: usize, bits: Bits) -> Vec<Complex> {
@@ -90,8 +94,7 @@ mod tests {
             let (c, length) = (Complex::new(real(x), real(y)), real(l));
             let decay = exp(&c.mul_real(&length, bits + 20).neg(), bits + 20);
             let lists = [forward(&c, &length, &decay, degree, bits), backward(&c, &length, &decay, degree, bits)];
-            for n in 0..=degree {
-                let (left, right) = (&lists[0][n], &lists[1][n]);
+            for (n, (left, right)) in lists[0].iter().zip(&lists[1]).enumerate() {
                 proptest::prop_assert!(left.re.overlaps(&right.re) && left.im.overlaps(&right.im));
                 const POINTS: usize = 400;
                 let (mut re, mut im) = (0.0, 0.0);

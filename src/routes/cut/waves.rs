@@ -14,7 +14,7 @@
 //! both are enclosures everywhere.
 //!
 //! **Variation.** The total variation of `psi0` is at most the sum of its jumps `|Sum_waves J_j0|` and of `Int |psi0'| <= Sum_n
-//! |q_n| (n l^n + |b| l^(n+1)/(n+1))` over waves and pieces, all times `N`.
+//! |q_n| ((l^n if n > 0) + |b| l^(n+1)/(n+1))` over waves and pieces, all times `N`.
 //!
 //! **Tail.** As `|c| >= kappa`, `kappa |F| <= N Sum |J_jn| E_j kappa^-n`, which falls with `kappa`.
 //!
@@ -36,11 +36,11 @@ impl CutAmplitude for WavePacket {
     }
 
     fn scaled(&self, factor: &Rational) -> Box<dyn CutAmplitude> {
-        Box::new(WavePacket::scaled(self, factor))
+        Box::new(ExactWaves::new(WavePacket::scaled(self, factor)))
     }
 
     fn mirrored(&self) -> Box<dyn CutAmplitude> {
-        Box::new(WavePacket::mirrored(self))
+        Box::new(ExactWaves::new(WavePacket::mirrored(self)))
     }
 
     fn is_symmetric(&self) -> bool {
@@ -49,6 +49,117 @@ impl CutAmplitude for WavePacket {
 
     fn is_real(&self) -> bool {
         WavePacket::is_real(self)
+    }
+
+    fn prepare(&self, bits: Bits) -> Result<Box<dyn PreparedAmplitude>, RouteFailure> {
+        ExactWaves::new(self.clone()).prepare(bits)
+    }
+}
+
+/// A packet with all that is exact and needed at every precision.
+struct ExactWaves {
+    packet: WavePacket,
+    real: bool,
+    /// `l_j`
+    lengths: Vec<Rational>,
+    /// `J_jn` without the phase, for each wave and knot.
+    jumps: Vec<Vec<Polynomial>>,
+    /// `Int Sum_b |q_b|^2`
+    diagonal_norm: Rational,
+    /// `q_b conj(q_b')` on the pieces, and `b - b'`, for each pair of different waves.
+    products: Vec<(WaveNumber, Vec<Polynomial>)>,
+}
+
+impl ExactWaves {
+    fn new(packet: WavePacket) -> ExactWaves {
+        let knots = packet.knots();
+        let lengths: Vec<Rational> = knots.windows(2).map(|ends| Rational::from(&ends[1] - &ends[0])).collect();
+        let jumps_of = |wave: &Wave| -> Vec<Polynomial> {
+            let at = |knot: usize| {
+                let left = knot.checked_sub(1).and_then(|index| wave.pieces.get(index));
+                jumps(left, wave.pieces.get(knot).zip(lengths.get(knot)))
+            };
+            (0..knots.len()).map(at).collect()
+        };
+        let mut diagonal_norm = Rational::new();
+        let mut products = Vec::new();
+        for (j, left) in packet.waves().iter().enumerate() {
+            for right in &packet.waves()[..j] {
+                let pieces = left.pieces.iter().zip(&right.pieces).map(|(x, y)| product_with_conjugate(x, y));
+                products.push((left.number.minus(&right.number), pieces.collect()));
+            }
+            for (piece, length) in left.pieces.iter().zip(&lengths) {
+                let mut power = Rational::from(1);
+                for (n, value) in product_with_conjugate(piece, piece).iter().enumerate() {
+                    power *= length;
+                    diagonal_norm += Rational::from(&value.re * &power) / (n as u64 + 1);
+                }
+            }
+        }
+        ExactWaves {
+            real: packet.is_real(),
+            jumps: packet.waves().iter().map(jumps_of).collect(),
+            lengths,
+            diagonal_norm,
+            products,
+            packet,
+        }
+    }
+
+    /// `1/N^2` to nearly `bits` bits.
+    fn norm(&self, bits: Bits) -> Result<Real, RouteFailure> {
+        const MOST_BITS: Bits = 1 << 16;
+        let mut fine = bits + 32;
+        while fine < MOST_BITS + bits {
+            let found = self.norm_once(fine);
+            if found.certainly_positive() && found.accuracy_estimate() >= f64::from(bits) {
+                return Ok(found);
+            }
+            fine *= 2;
+        }
+        let reason = "the terms of the packet nearly cancel: its norm is too small".to_owned();
+        Err(RouteFailure::OutOfReach { reason })
+    }
+
+    fn norm_once(&self, bits: Bits) -> Real {
+        let mut total = Real::from_rational(&self.diagonal_norm, bits);
+        for (number, pieces) in &self.products {
+            let c = Complex::new(Real::zero(), wave_number(number, bits));
+            for ((piece, length), end) in pieces.iter().zip(&self.lengths).zip(&self.packet.knots()[1..]) {
+                let Some(degree) = piece.len().checked_sub(1) else { continue };
+                let decay = phase(number, &Rational::from(-length), bits);
+                let moments = moments(&c, &Real::from_rational(length, bits), &decay, degree, bits);
+                let mut sum = Complex::zero();
+                for (coefficient, moment) in piece.iter().zip(moments) {
+                    sum = sum.add(&exact(coefficient, bits).mul(&moment, bits), bits);
+                }
+                // Each pair occurs twice, conjugate to each other.
+                total = total.add(&sum.mul(&phase(number, end, bits), bits).re.shift(1), bits);
+            }
+        }
+        total
+    }
+}
+
+impl CutAmplitude for ExactWaves {
+    fn half_width(&self) -> Rational {
+        self.packet.half_width()
+    }
+
+    fn scaled(&self, factor: &Rational) -> Box<dyn CutAmplitude> {
+        CutAmplitude::scaled(&self.packet, factor)
+    }
+
+    fn mirrored(&self) -> Box<dyn CutAmplitude> {
+        CutAmplitude::mirrored(&self.packet)
+    }
+
+    fn is_symmetric(&self) -> bool {
+        self.packet.is_symmetric()
+    }
+
+    fn is_real(&self) -> bool {
+        self.real
     }
 
     fn prepare(&self, bits: Bits) -> Result<Box<dyn PreparedAmplitude>, RouteFailure> {
@@ -62,8 +173,10 @@ struct PreparedWaves {
     factor: Real,
     /// `x_R - x_j`
     gaps: Vec<Real>,
-    /// `l_j`
+    /// The different lengths of pieces.
     lengths: Vec<Real>,
+    /// Which of them each piece has.
+    class: Vec<usize>,
     shortest: f64,
     waves: Vec<PreparedWave>,
     variation: Magnitude,
@@ -76,7 +189,7 @@ struct PreparedWave {
     degree: usize,
     /// `exp(i b x_j)`
     phases: Vec<Complex>,
-    /// `exp(-i b l_j)`
+    /// `exp(-i b l)` for the different lengths.
     back_phases: Vec<Complex>,
     /// `q_j`
     pieces: Vec<Vec<Complex>>,
@@ -85,20 +198,27 @@ struct PreparedWave {
 }
 
 impl PreparedWaves {
-    fn new(packet: &WavePacket, bits: Bits) -> Result<PreparedWaves, RouteFailure> {
+    fn new(exact: &ExactWaves, bits: Bits) -> Result<PreparedWaves, RouteFailure> {
         let real = |value: &Rational| Real::from_rational(value, bits);
-        let knots = packet.knots();
-        let exact_lengths: Vec<Rational> = knots.windows(2).map(|ends| Rational::from(&ends[1] - &ends[0])).collect();
-        let norm = norm(packet, &exact_lengths, bits)?;
-        let factor = sqrt(&Real::from_i64(1).div(&norm, bits), bits);
+        let factor = sqrt(&Real::from_i64(1).div(&exact.norm(bits)?, bits), bits);
+        let knots = exact.packet.knots();
         let end = knots.last().cloned().unwrap_or_default();
-        let waves: Vec<PreparedWave> =
-            packet.waves().iter().map(|wave| PreparedWave::new(wave, knots, &exact_lengths, bits)).collect();
-        let lengths: Vec<Real> = exact_lengths.iter().map(real).collect();
+        let mut different: Vec<Rational> = Vec::new();
+        let mut class = Vec::with_capacity(exact.lengths.len());
+        for length in &exact.lengths {
+            let known = different.iter().position(|other| other == length);
+            class.push(known.unwrap_or(different.len()));
+            if known.is_none() {
+                different.push(length.clone());
+            }
+        }
+        let waves = exact.packet.waves().iter().zip(&exact.jumps);
+        let waves = waves.map(|(wave, jumps)| PreparedWave::new(wave, jumps, knots, &different, bits)).collect();
+        let lengths: Vec<Real> = different.iter().map(real).collect();
         let shortest = lengths.iter().map(Real::to_f64).fold(f64::INFINITY, f64::min);
         let gaps = knots.iter().map(|knot| real(&Rational::from(&end - knot))).collect();
         let mut prepared =
-            PreparedWaves { bits, factor, gaps, lengths, shortest, waves, variation: Magnitude::INFINITY };
+            PreparedWaves { bits, factor, gaps, lengths, class, shortest, waves, variation: Magnitude::INFINITY };
         prepared.variation = prepared.bounded_variation();
         Ok(prepared)
     }
@@ -116,14 +236,13 @@ impl PreparedWaves {
         }
         for wave in &self.waves {
             let number = wave.number.abs_upper();
-            for (piece, length) in wave.pieces.iter().zip(&self.lengths) {
-                let length = length.abs_upper();
+            for (piece, class) in wave.pieces.iter().zip(&self.class) {
+                let length = self.lengths[*class].abs_upper();
                 let mut power = Magnitude::ONE;
                 for (n, coefficient) in piece.iter().enumerate() {
-                    let n = n as u64;
-                    let slope = power.mul(Magnitude::from_u64(n));
+                    let slope = if n == 0 { Magnitude::ZERO } else { power };
                     power = power.mul(length);
-                    let turn = number.mul(power).div(Magnitude::from_u64(n + 1));
+                    let turn = number.mul(power).div(Magnitude::from_u64(n as u64 + 1));
                     total = total.add(coefficient.abs_upper().mul(slope.add(turn)));
                 }
             }
@@ -131,22 +250,38 @@ impl PreparedWaves {
         total.mul(self.factor.abs_upper())
     }
 
-    /// `E_j`; those that vanish at the working precision become small balls about zero.
-    fn decays(&self, kappa: &Real) -> Vec<Real> {
+    /// `exp(-kappa l)` for the different lengths; those that vanish at the working precision become small balls about zero.
+    fn steps(&self, kappa: &Real) -> Vec<Real> {
         let negligible = Magnitude::power_of_two(-i64::from(self.bits) - 64);
-        let decay = |gap: &Real| {
-            let exponent = gap.mul(kappa, self.bits);
+        let decay = |length: &Real| {
+            let exponent = length.mul(kappa, self.bits);
             let small = exp_minus_upper(&exponent);
-            if small.cmp_value(negligible).is_lt() { Real::zero().widen(small) } else { exp(&exponent.neg(), self.bits) }
+            if small.cmp_value(negligible).is_lt() {
+                Real::zero().widen(small)
+            } else {
+                exp(&exponent.neg(), self.bits)
+            }
         };
-        self.gaps.iter().map(decay).collect()
+        self.lengths.iter().map(decay).collect()
+    }
+
+    /// `E_j`
+    fn decays(&self, steps: &[Real]) -> Vec<Real> {
+        let mut list = vec![Real::from_i64(1)];
+        for (index, class) in self.class.iter().rev().enumerate() {
+            let next = if index == 0 { steps[*class].clone() } else { list[index].mul(&steps[*class], self.bits) };
+            list.push(next);
+        }
+        list.reverse();
+        list
     }
 }
 
 impl PreparedAmplitude for PreparedWaves {
     fn value(&self, kappa: &Real) -> Complex {
         let bits = self.bits;
-        let decays = self.decays(kappa);
+        let steps = self.steps(kappa);
+        let decays = self.decays(&steps);
         let mut total = Complex::zero();
         for wave in &self.waves {
             let c = Complex::new(kappa.clone(), wave.number.clone());
@@ -154,7 +289,7 @@ impl PreparedAmplitude for PreparedWaves {
             let part = if reach > wave.degree as f64 + 2.0 {
                 wave.by_jumps(&c, &decays, bits)
             } else {
-                wave.by_moments(&c, kappa, &decays, &self.lengths, bits)
+                wave.by_moments(&c, &steps, &decays, self)
             };
             total = total.add(&part, bits);
         }
@@ -183,21 +318,19 @@ impl PreparedAmplitude for PreparedWaves {
 }
 
 impl PreparedWave {
-    fn new(wave: &Wave, knots: &[Rational], lengths: &[Rational], bits: Bits) -> PreparedWave {
+    fn new(wave: &Wave, jumps: &[Polynomial], knots: &[Rational], lengths: &[Rational], bits: Bits) -> PreparedWave {
         let complex = |value: &ExactComplex| exact(value, bits);
-        let phase = |place: &Rational| phase(&wave.number, place, bits);
-        let phases: Vec<Complex> = knots.iter().map(phase).collect();
-        let jumps = (0..knots.len()).zip(&phases).map(|(knot, phase)| {
-            let left = knot.checked_sub(1).and_then(|index| wave.pieces.get(index));
-            let right = wave.pieces.get(knot).zip(lengths.get(knot));
-            jumps(left, right).iter().map(|jump| complex(jump).mul(phase, bits)).collect()
-        });
+        let phases: Vec<Complex> = knots.iter().map(|place| phase(&wave.number, place, bits)).collect();
+        let back = |length: &Rational| phase(&wave.number, &Rational::from(-length), bits);
+        let with_phase = |(list, phase): (&Polynomial, &Complex)| -> Vec<Complex> {
+            list.iter().map(|jump| complex(jump).mul(phase, bits)).collect()
+        };
         PreparedWave {
-            jumps: jumps.collect(),
+            jumps: jumps.iter().zip(&phases).map(with_phase).collect(),
             number: wave_number(&wave.number, bits),
             still: wave.number.is_zero(),
             degree: wave.pieces.iter().map(Vec::len).max().unwrap_or(1).max(1) - 1,
-            back_phases: lengths.iter().map(|length| phase(&Rational::from(-length))).collect(),
+            back_phases: lengths.iter().map(back).collect(),
             pieces: wave.pieces.iter().map(|piece| piece.iter().map(complex).collect()).collect(),
             phases,
         }
@@ -220,17 +353,24 @@ impl PreparedWave {
         total
     }
 
-    fn by_moments(&self, c: &Complex, kappa: &Real, decays: &[Real], lengths: &[Real], bits: Bits) -> Complex {
+    fn by_moments(&self, c: &Complex, steps: &[Real], decays: &[Real], all: &PreparedWaves) -> Complex {
+        let bits = all.bits;
+        let lists: Vec<Vec<Complex>> = (0..steps.len())
+            .map(|class| {
+                let decay = self.back_phases[class].mul_real(&steps[class], bits);
+                moments(c, &all.lengths[class], &decay, self.degree, bits)
+            })
+            .collect();
         let mut total = Complex::zero();
         for (index, piece) in self.pieces.iter().enumerate() {
-            let Some(degree) = piece.len().checked_sub(1) else { continue };
-            let length = &lengths[index];
-            let decay = self.back_phases[index].mul_real(&exp(&kappa.mul(length, bits).neg(), bits), bits);
             let mut sum = Complex::zero();
-            for (coefficient, moment) in piece.iter().zip(moments(c, length, &decay, degree, bits)) {
-                sum = sum.add(&coefficient.mul(&moment, bits), bits);
+            for (coefficient, moment) in piece.iter().zip(&lists[all.class[index]]) {
+                sum = sum.add(&coefficient.mul(moment, bits), bits);
             }
-            total = total.add(&sum.mul(&self.phases[index + 1], bits).mul_real(&decays[index + 1], bits), bits);
+            if !self.still {
+                sum = sum.mul(&self.phases[index + 1], bits);
+            }
+            total = total.add(&sum.mul_real(&decays[index + 1], bits), bits);
         }
         total
     }
@@ -284,37 +424,6 @@ fn phase(number: &WaveNumber, place: &Rational, bits: Bits) -> Complex {
     Complex::new(cos(&angle, bits), sin(&angle, bits))
 }
 
-/// `Int |psi|^2 dx` before normalisation, to nearly `bits` bits.
-fn norm(packet: &WavePacket, lengths: &[Rational], bits: Bits) -> Result<Real, RouteFailure> {
-    const MOST_BITS: Bits = 1 << 16;
-    let mut fine = bits + 32;
-    while fine < MOST_BITS + bits {
-        let found = norm_once(packet, lengths, fine);
-        if found.certainly_positive() && found.accuracy_estimate() >= f64::from(bits) {
-            return Ok(found);
-        }
-        fine *= 2;
-    }
-    Err(RouteFailure::OutOfReach { reason: "the terms of the packet nearly cancel: its norm is too small".to_owned() })
-}
-
-fn norm_once(packet: &WavePacket, lengths: &[Rational], bits: Bits) -> Real {
-    let mut total = Real::zero();
-    for (j, left) in packet.waves().iter().enumerate() {
-        // Pairs of different waves occur twice, conjugate to each other.
-        for (index, right) in packet.waves()[..=j].iter().enumerate() {
-            let number = left.number.minus(&right.number);
-            let mut sum = Real::zero();
-            for (i, length) in lengths.iter().enumerate() {
-                let product = product_with_conjugate(&left.pieces[i], &right.pieces[i]);
-                sum = sum.add(&integral(&product, &number, &packet.knots()[i + 1], length, bits).re, bits);
-            }
-            total = total.add(&if index == j { sum } else { sum.shift(1) }, bits);
-        }
-    }
-    total
-}
-
 fn product_with_conjugate(left: &[ExactComplex], right: &[ExactComplex]) -> Polynomial {
     let mut list = vec![ExactComplex::default(); (left.len() + right.len()).saturating_sub(1)];
     for (i, x) in left.iter().enumerate() {
@@ -323,33 +432,4 @@ fn product_with_conjugate(left: &[ExactComplex], right: &[ExactComplex]) -> Poly
         }
     }
     if left.is_empty() || right.is_empty() { Vec::new() } else { list }
-}
-
-/// `Int q(x_R - x) exp(i b x) dx` over one piece.
-fn integral(piece: &[ExactComplex], number: &WaveNumber, end: &Rational, length: &Rational, bits: Bits) -> Complex {
-    let Some(degree) = piece.len().checked_sub(1) else { return Complex::zero() };
-    let real_length = Real::from_rational(length, bits);
-    let c = Complex::new(Real::zero(), wave_number(number, bits));
-    let decay = phase(number, &Rational::from(-length), bits);
-    let list = if number.is_zero() {
-        powers(length, degree, bits)
-    } else {
-        moments(&c, &real_length, &decay, degree, bits)
-    };
-    let mut sum = Complex::zero();
-    for (coefficient, moment) in piece.iter().zip(list) {
-        sum = sum.add(&exact(coefficient, bits).mul(&moment, bits), bits);
-    }
-    sum.mul(&phase(number, end, bits), bits)
-}
-
-/// `Int_0^l y^n dy`.
-fn powers(length: &Rational, degree: usize, bits: Bits) -> Vec<Complex> {
-    let mut power = Rational::from(1);
-    let mut list = Vec::with_capacity(degree + 1);
-    for n in 0..=degree {
-        power *= length;
-        list.push(Complex::from_real(Real::from_rational(&Rational::from(&power / (n as u64 + 1)), bits)));
-    }
-    list
 }

@@ -19,7 +19,6 @@
 //! `n (4n + 1) (2e + 3) u` (as `|r| <= 1/4` and the bracket is at most `(4n+1)/4`). The packed product sums `2n^2`
 //! triple products, each off by at most `(2e + 2) u`, which is less.
 
-use super::plan::PRODUCT_FROM;
 use crate::arithmetic::{Bits, Magnitude, Real};
 use crate::functions::elementary::ln_2;
 use crate::routes::{Effort, RouteFailure};
@@ -40,6 +39,8 @@ pub(in crate::routes) struct Lattice {
     pub bits: Bits,
     /// The sums are done in units of `2^-scale`.
     pub scale: u32,
+    /// From this many near nodes on, the double sum is done by one big-integer product.
+    pub product_from: usize,
 }
 
 impl Lattice {
@@ -67,7 +68,7 @@ pub(in crate::routes) fn sum(
     table: &Tangents,
     effort: &Effort,
 ) -> Result<Real, RouteFailure> {
-    let total = if plan.near.saturating_sub(plan.first) >= PRODUCT_FROM {
+    let total = if plan.near.saturating_sub(plan.first) >= plan.product_from {
         by_product(nodes, plan, table, effort)?
     } else {
         by_pairs(nodes, plan, table, effort)?

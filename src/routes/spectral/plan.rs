@@ -14,7 +14,7 @@ use std::f64::consts::{FRAC_PI_2, LN_2, LN_10, PI};
 /// More nodes than this are refused.
 const MAX_NODES: f64 = 60_000.0;
 /// From this many near nodes on, the double sum is done by one big-integer product.
-pub(super) const PRODUCT_FROM: usize = 220;
+const PRODUCT_FROM: usize = 220;
 
 /// All choices for one evaluation.
 pub(super) struct Plan {
@@ -80,6 +80,7 @@ impl Plan {
             last: self.last,
             bits: self.bits,
             scale: self.scale,
+            product_from: PRODUCT_FROM,
         }
     }
 
