@@ -341,7 +341,7 @@ fn pieces() -> impl Strategy<Value = (Vec<Rational>, Vec<Polynomial>)> {
     prop::collection::vec((1i64..30, prop::collection::vec(coefficient(), 1..5)), 1..5).prop_map(|list| {
         let mut knots = vec![Rational::new()];
         for (length, _) in &list {
-            let next = Rational::from(&knots[knots.len() - 1] + q(*length, 10));
+            let next = &knots[knots.len() - 1] + q(*length, 10);
             knots.push(next);
         }
         (knots, list.into_iter().map(|(_, piece)| piece).collect())

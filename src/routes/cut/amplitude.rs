@@ -47,4 +47,18 @@ pub trait PreparedAmplitude: Send + Sync {
 
     /// A bound of `kappa' |F(kappa')|` over all real `kappa' >= kappa > 0`.
     fn tail(&self, kappa: &Real) -> Magnitude;
+
+    /// The part of `F` that comes from the right edge alone: `Sum_waves Sum_n J_n/(kappa + i b)^(n+1)`.
+    fn edge(&self) -> Vec<EdgeWave>;
+
+    /// A bound of `kappa' |F(kappa') - edge part|` over all real `kappa' >= kappa > 0`.
+    fn inner_tail(&self, kappa: &Real) -> Magnitude;
+}
+
+/// What one wave contributes at the right edge.
+pub struct EdgeWave {
+    /// `b`
+    pub number: Real,
+    /// `J_n` for `n = 0, 1, ...`
+    pub jumps: Vec<Complex>,
 }

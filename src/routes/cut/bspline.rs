@@ -5,8 +5,9 @@
 //!
 //! **Variation.** The spline rises to its maximum, at most `l^(p-1)`, and falls: `V <= 2 N l^(p-1)`.
 //! **Tail.** `kappa |F| <= N kappa^(1-p)`, which does not grow with `kappa`; nor is it above the variation.
+//! **Edge.** `N z^-p`; it leaves out at most `N p exp(-kappa l) kappa^-p`, as `1 - (1 - e)^p <= p e`.
 
-use super::amplitude::{CutAmplitude, PreparedAmplitude};
+use super::amplitude::{CutAmplitude, EdgeWave, PreparedAmplitude};
 use crate::arithmetic::{Bits, Complex, Magnitude, Real};
 use crate::functions::elementary::{exp_m1, sqrt};
 use crate::packets::BSplinePacket;
@@ -78,5 +79,19 @@ impl PreparedAmplitude for PreparedSpline {
     fn tail(&self, kappa: &Real) -> Magnitude {
         let power = Magnitude::ONE.div(kappa.abs_lower()).pow(u64::from(self.order) - 1);
         power.mul(self.factor.abs_upper()).min(self.variation())
+    }
+
+    fn edge(&self) -> Vec<EdgeWave> {
+        let mut jumps = vec![Complex::zero(); self.order as usize];
+        if let Some(last) = jumps.last_mut() {
+            *last = Complex::from_real(self.factor.clone());
+        }
+        vec![EdgeWave { number: Real::zero(), jumps }]
+    }
+
+    fn inner_tail(&self, kappa: &Real) -> Magnitude {
+        let decay = exp_minus_upper(&self.step.mul(kappa, self.bits));
+        let power = Magnitude::ONE.div(kappa.abs_lower()).pow(u64::from(self.order) - 1);
+        power.mul(self.factor.abs_upper()).mul(decay).mul(Magnitude::from_u64(u64::from(self.order)))
     }
 }

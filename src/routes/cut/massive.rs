@@ -11,10 +11,10 @@
 //! ```
 //!
 //! even and entire in `x` (`F` is entire and real on the real line). The factor `exp(-E)` is taken out of every weight, and the
-//! weights are divided by a power of two `W >= 2V`, so that with `|z F| <= V`
+//! weights are divided by a power of two `W >= 4V`, so that with `|z F| <= V`
 //!
 //! ```text
-//! |w(x)| <= 1/4 exp(-Y(x)) tanh x,     |w(x)/(2 sinh x)| <= 1/8 exp(-Y(x)) / cosh x     on the real line.
+//! |w(x)| <= 1/8 exp(-Y(x)) tanh x,     |w(x)/(2 sinh x)| <= 1/16 exp(-Y(x)) / cosh x     on the real line.
 //! ```
 //!
 //! # Discretisation
@@ -45,13 +45,17 @@
 //!   T/(2W)) exp(-Y(X))` (the exponential only beyond the centre). Pairs with a node there add at most `2 (1/4) U h^2 Sum_{k>K}
 //!   Sum_l 1/(cosh + cosh) <= (U/2) Int_X^inf x/sinh x dx <= U (X+1) e^-X/(1 - e^(-2X))`.
 //!
+//! * At the cone, if that is shorter, the nodes beyond some place are summed in closed form instead: [`super::edge`].
+//!
 //! Rounding: balls, and the bound of the near field of the box (which is about absolute values).
 
-use super::amplitude::{CutAmplitude, PreparedAmplitude};
+use super::amplitude::{CutAmplitude, EdgeWave, PreparedAmplitude};
+use super::edge::EdgeSeries;
 use super::{Problem, SideSum, exponent_above, shown, size_bound};
 use crate::arithmetic::{Bits, Complex, Magnitude, Real};
 use crate::functions::elementary::{cos, exp, exp_m1, pi, sqrt};
 use crate::routes::estimate::{bisect, dyadic, proper_distance};
+use crate::routes::spectral::far_field::{self, FarPlan, FarWeights};
 use crate::routes::spectral::near_field::{self, Lattice, Tangents, Weights};
 use crate::routes::spectral::{BOUND_BITS, one_minus_exp};
 use crate::routes::{Effort, RouteFailure};
@@ -63,6 +67,14 @@ pub(super) const MAX_NODES: f64 = 60_000.0;
 
 /// From this many nodes on, the double sum is done by one big-integer product.
 const PRODUCT_FROM: usize = 64;
+
+/// Where the far field begins, and its series.
+struct FarChoice {
+    near: f64,
+    last: f64,
+    series_terms: usize,
+    cross_terms: usize,
+}
 
 /// What the bounds need, in few bits.
 struct Sizes {
@@ -82,6 +94,8 @@ struct Plan {
     lattice: Lattice,
     /// `None` stands for `pi/2`.
     strip: Option<Rational>,
+    /// Terms of the two series of the far field, if it is used.
+    far: Option<(usize, usize)>,
 }
 
 pub(super) fn sum(
@@ -96,23 +110,38 @@ pub(super) fn sum(
     let lattice = &plan.lattice;
     effort.allow_bits(lattice.bits)?;
     let tangents = Tangents::new(lattice, effort)?;
-    let errors = [
-        ("discretisation bound", sizes.discretisation(&plan)),
-        ("left cut-off bound", place.left_cut(lattice)),
-        ("right cut-off bound", sizes.right_cut(&place, lattice)),
-    ];
+    let mut errors =
+        vec![("discretisation bound", sizes.discretisation(&plan)), ("left cut-off bound", place.left_cut(lattice))];
+    if plan.far.is_none() {
+        errors.push(("right cut-off bound", sizes.right_cut(&place, lattice)));
+    }
     let step = lattice.step_ball(lattice.bits).square(lattice.bits);
+    let nodes = Nodes::new(amplitude, problem, &sizes, lattice, effort)?;
+    let edge = if plan.far.is_some() { amplitude.prepare(lattice.bits)?.edge() } else { Vec::new() };
     let mut total = Real::zero();
-    for part in Nodes::new(amplitude, problem, &sizes, lattice, effort)?.parts() {
-        let found = near_field::sum(&part, lattice, &tangents, effort)?.mul(&step, lattice.bits);
-        let widened = errors.iter().fold(found, |sum, (_, error)| sum.widen(*error));
+    for (index, part) in nodes.parts().enumerate() {
+        let mut found = near_field::sum(&part, lattice, &tangents, effort)?;
+        if let Some((series_terms, cross_terms)) = plan.far {
+            let series = sizes.edge_series(&edge, problem, lattice.bits, index == 1);
+            let far_plan = FarPlan { lattice: lattice.clone(), series_terms, cross_terms };
+            let far = far_field::sum(&series, &part, &far_plan, effort)?;
+            found = found.add(&far.sum, lattice.bits);
+            if index == 0 {
+                // The bound covers both parts.
+                errors.push(("far-field replacement bound", far.replacement_error));
+            }
+        }
+        let integral = found.mul(&step, lattice.bits);
+        let widened = errors.iter().fold(integral, |sum, (_, error)| sum.widen(*error));
         total = total.add(&widened, lattice.bits);
     }
     let mut witness = vec![
         ("step h, in units of ln 2", lattice.step.to_string()),
         ("strip half-width b", plan.strip.as_ref().map_or("pi/2".to_owned(), ToString::to_string)),
         ("first node", lattice.first.to_string()),
+        ("last node of those that all pair", lattice.near.to_string()),
         ("last node", lattice.last.to_string()),
+        ("far field in closed form", plan.far.is_some().to_string()),
         ("binary logarithm of the unit of the weights", sizes.exponent.to_string()),
     ];
     witness.extend(errors.iter().map(|(name, bound)| (*name, shown(*bound))));
@@ -171,7 +200,7 @@ impl Sizes {
             let reason = "the variation of the packet has no finite bound".to_owned();
             return Err(RouteFailure::OutOfReach { reason });
         }
-        let exponent = exponent_above(variation) + 1;
+        let exponent = exponent_above(variation) + 2;
         let squared = Real::from_rational(&problem.squared_distance(), BOUND_BITS);
         Ok(Sizes {
             variation: variation.shift(-exponent),
@@ -180,6 +209,17 @@ impl Sizes {
             proper_distance: sqrt(&squared, BOUND_BITS),
             tail,
         })
+    }
+
+    fn edge_series<'a>(
+        &'a self,
+        waves: &'a [EdgeWave],
+        problem: &Problem,
+        bits: Bits,
+        imaginary: bool,
+    ) -> EdgeSeries<'a> {
+        let time = Real::from_rational(&problem.time, bits);
+        EdgeSeries { waves, amplitude: self.tail.as_ref(), time, exponent: self.exponent, imaginary }
     }
 
     /// `C` of Lemma 2.
@@ -239,22 +279,19 @@ impl Sizes {
         let (t, d) = (problem.time.to_f64(), problem.distance.to_f64());
         let distance = proper_distance(t, d);
         let (width, strip) = self.choose_step(distance, goal);
-        let step = dyadic(width / LN_2, 24);
-        let h = step.to_f64() * LN_2;
-        let (fall, rise) = (place.left_root.to_f64(), place.right_root.to_f64());
-        let exponent = |x: f64| (fall * (-x / 2.0).exp() - rise * (x / 2.0).exp()).powi(2);
-        let centre = if d == 0.0 { f64::INFINITY } else { (fall / rise).ln() };
-        let left = if d == 0.0 { (t / goal).ln().max(0.0) } else { bisect(0.0, centre, |x| exponent(x) < goal) };
-        let enough = |x: f64| {
-            let beyond = if x > centre { exponent(x) } else { 0.0 };
-            let weight = self.tail_weight(&Real::from_float(rug::Float::with_val(53, x))).log2_estimate() * LN_2;
-            weight + (x + 1.0).ln() - x - beyond < -goal
+        // At the cone whole fractions of ln 2, for the far field.
+        let step = if d == 0.0 {
+            Rational::from((1, (LN_2 / width).ceil().clamp(1.0, 1e9) as u32))
+        } else {
+            dyadic(width / LN_2, 24)
         };
-        let low = left.max(if d == 0.0 { 0.0 } else { centre.max(0.0) });
-        let high = low + goal + (goal + low + 2.0).ln() + 4.0;
-        let right = coarse_bisect(low, high, h, enough);
-        let (first, last) = ((left / h).floor().max(1.0), (right / h).ceil() + 1.0);
-        let count = last - first + 1.0;
+        let h = step.to_f64() * LN_2;
+        let (left, right) = self.range(place, d == 0.0, goal, h);
+        let far = if d == 0.0 { self.far_plan(problem, goal, h, right) } else { None };
+        let (near, last) = far.as_ref().map_or((right, right), |far| (far.near, far.last));
+        let first = (left / h).floor().max(1.0);
+        let (near, last) = ((near / h).ceil() + 1.0, (last / h).ceil() + 1.0);
+        let count = last.max(first) - first + 1.0;
         if count.is_nan() || count > MAX_NODES {
             let reason = format!("the spectral sum would need {count:.0} nodes, more than {MAX_NODES:.0}");
             return Err(RouteFailure::OutOfReach { reason });
@@ -262,17 +299,61 @@ impl Sizes {
         let scale = (goal / LN_2 + 2.0 * count.log2() + 8.0).max(48.0);
         // Exponents of size up to E lose log2(E) bits, huge times a few more, the recurrence of the nodes their number.
         let bits = scale + distance.max(1.0).log2() + (1.0 + t).log2() + count.log2() + 20.0;
-        let (first, last) = (first as usize, last as usize);
         let lattice = Lattice {
             step,
-            first,
-            near: last,
-            last,
+            first: first as usize,
+            near: near.max(first) as usize,
+            last: last.max(first) as usize,
             bits: bits as u32,
             scale: scale as u32,
             product_from: PRODUCT_FROM,
         };
-        Ok(Plan { lattice, strip: strip.map(|b| dyadic(b, 30)) })
+        Ok(Plan {
+            lattice,
+            strip: strip.map(|b| dyadic(b, 30)),
+            far: far.map(|far| (far.series_terms, far.cross_terms)),
+        })
+    }
+
+    /// Where the cut-off bounds reach the goal on the left and on the right.
+    fn range(&self, place: &Place, at_cone: bool, goal: f64, h: f64) -> (f64, f64) {
+        let (fall, rise) = (place.left_root.to_f64(), place.right_root.to_f64());
+        let exponent = |x: f64| (fall * (-x / 2.0).exp() - rise * (x / 2.0).exp()).powi(2);
+        let centre = if at_cone { f64::INFINITY } else { (fall / rise).ln() };
+        let left = if at_cone {
+            (place.time.to_f64() / goal).ln().max(0.0)
+        } else {
+            bisect(0.0, centre, |x| exponent(x) < goal)
+        };
+        let enough = |x: f64| {
+            let beyond = if x > centre { exponent(x) } else { 0.0 };
+            let weight = self.tail_weight(&Real::from_float(rug::Float::with_val(53, x))).log2_estimate() * LN_2;
+            weight + (x + 1.0).ln() - x - beyond < -goal
+        };
+        let low = left.max(if at_cone { 0.0 } else { centre.max(0.0) });
+        let high = low + goal + (goal + low + 2.0).ln() + 4.0;
+        (left, coarse_bisect(low, high, h, enough))
+    }
+
+    /// Where the closed form can begin, if it saves nodes.
+    fn far_plan(&self, problem: &Problem, goal: f64, h: f64, right: f64) -> Option<FarChoice> {
+        let edge = self.tail.edge();
+        let series = self.edge_series(&edge, problem, BOUND_BITS, false);
+        let lowest = problem.time.to_f64().ln().max(1.0 - series.radius().ln());
+        let good = |x: f64| {
+            let z = Real::from_float(rug::Float::with_val(53, (-x).exp()));
+            series.error(&z).log2_estimate() * LN_2 < -goal
+        };
+        if lowest >= right || !good(right) {
+            return None;
+        }
+        let near = coarse_bisect(lowest, right, h, good);
+        // More near nodes make the cross series short: balance their number against its terms.
+        let last = near + 2.5 + 0.005 * goal;
+        let (series_terms, _) = series.series_length(near + h, goal);
+        let cross_terms = ((goal + 6.0) / (last - near + h)).ceil() + 2.0;
+        let worthwhile = last + 1.0 < right && (series_terms as f64) < 40.0 + 4.0 * goal;
+        worthwhile.then_some(FarChoice { near, last, series_terms, cross_terms: cross_terms as usize })
     }
 
     /// The largest step for which Theorem 3 reaches `exp(-goal)`, with the strip that allows it.

@@ -28,12 +28,13 @@
 
 mod amplitude;
 mod bspline;
+mod edge;
 mod massive;
 mod massless;
 mod moments;
 mod waves;
 
-pub use amplitude::{CutAmplitude, PreparedAmplitude};
+pub use amplitude::{CutAmplitude, EdgeWave, PreparedAmplitude};
 
 use super::{Effort, Evaluation, RouteFailure, RouteOutcome};
 use crate::arithmetic::{Bits, Interval, Magnitude, Real, decimal};

@@ -16,12 +16,13 @@
 //! **Variation.** The total variation of `psi0` is at most the sum of its jumps `|Sum_waves J_j0|` and of `Int |psi0'| <= Sum_n
 //! |q_n| ((l^n if n > 0) + |b| l^(n+1)/(n+1))` over waves and pieces, all times `N`.
 //!
-//! **Tail.** As `|c| >= kappa`, `kappa |F| <= N Sum |J_jn| E_j kappa^-n`, which falls with `kappa`.
+//! **Tail.** As `|c| >= kappa`, `kappa |F| <= N Sum |J_jn| E_j kappa^-n`, which falls with `kappa`; without the last knot it bounds
+//! what the right edge alone leaves out.
 //!
 //! **Norm.** `1/N^2 = Sum_pieces Sum_{b, b'} Int q_b conj(q_b') exp(i (b - b') x) dx`, by the same moments with an imaginary `c`;
 //! for one wave it is a rational.
 
-use super::amplitude::{CutAmplitude, PreparedAmplitude};
+use super::amplitude::{CutAmplitude, EdgeWave, PreparedAmplitude};
 use super::moments::moments;
 use crate::arithmetic::{Bits, Complex, Magnitude, Real};
 use crate::functions::elementary::{cos, exp, pi, sin, sqrt};
@@ -250,6 +251,23 @@ impl PreparedWaves {
         total.mul(self.factor.abs_upper())
     }
 
+    /// `N Sum |J_jn| E_j kappa^-n` over the first knots.
+    fn tail_of(&self, kappa: &Real, knots: usize) -> Magnitude {
+        let inverse = Magnitude::ONE.div(kappa.abs_lower());
+        let mut total = Magnitude::ZERO;
+        for (knot, gap) in self.gaps.iter().enumerate().take(knots) {
+            let decay = exp_minus_upper(&gap.mul(kappa, self.bits));
+            for wave in &self.waves {
+                let mut power = decay;
+                for jump in &wave.jumps[knot] {
+                    total = total.add(jump.abs_upper().mul(power));
+                    power = power.mul(inverse);
+                }
+            }
+        }
+        total.mul(self.factor.abs_upper())
+    }
+
     /// `exp(-kappa l)` for the different lengths; those that vanish at the working precision become small balls about zero.
     fn steps(&self, kappa: &Real) -> Vec<Real> {
         let negligible = Magnitude::power_of_two(-i64::from(self.bits) - 64);
@@ -301,19 +319,19 @@ impl PreparedAmplitude for PreparedWaves {
     }
 
     fn tail(&self, kappa: &Real) -> Magnitude {
-        let inverse = Magnitude::ONE.div(kappa.abs_lower());
-        let mut total = Magnitude::ZERO;
-        for (knot, gap) in self.gaps.iter().enumerate() {
-            let decay = exp_minus_upper(&gap.mul(kappa, self.bits));
-            for wave in &self.waves {
-                let mut power = decay;
-                for jump in &wave.jumps[knot] {
-                    total = total.add(jump.abs_upper().mul(power));
-                    power = power.mul(inverse);
-                }
-            }
-        }
-        total.mul(self.factor.abs_upper())
+        self.tail_of(kappa, self.gaps.len())
+    }
+
+    fn edge(&self) -> Vec<EdgeWave> {
+        let at_edge = |wave: &PreparedWave| EdgeWave {
+            number: wave.number.clone(),
+            jumps: wave.jumps.last().into_iter().flatten().map(|j| j.mul_real(&self.factor, self.bits)).collect(),
+        };
+        self.waves.iter().map(at_edge).collect()
+    }
+
+    fn inner_tail(&self, kappa: &Real) -> Magnitude {
+        self.tail_of(kappa, self.gaps.len() - 1)
     }
 }
 

@@ -17,6 +17,7 @@
 //! `5 eps + 20` units for either weight before the factor 1/4. With `n + 16` guard bits that is a small part of a unit
 //! of the double sum.
 
+use super::near_field::Lattice;
 use super::nodes::fixed;
 use super::plan::Plan;
 use crate::arithmetic::{Magnitude, Real};
@@ -30,7 +31,7 @@ pub(super) struct Powers {
 }
 
 impl Powers {
-    pub(super) fn new(plan: &Plan, bits: u32) -> Result<Powers, RouteFailure> {
+    pub(super) fn new(plan: &Lattice, bits: u32) -> Result<Powers, RouteFailure> {
         let parts = plan.octave_parts();
         let step = plan.step_ball(bits + 8);
         let base = (0..parts)
@@ -113,7 +114,7 @@ impl ConeWeights {
         effort.check()?;
         let start = families.iter().fold(Magnitude::ZERO, |m, f| m.max(f.start));
         let [time_up, time_down, width_up, width_down] = families.map(|family| family.list);
-        let powers = Powers::new(plan, fine)?;
+        let powers = Powers::new(&plan.lattice(), fine)?;
         let one = Integer::from(1) << fine;
         let whole = Integer::from(1) << (2 * fine);
         let mut result = ConeWeights {

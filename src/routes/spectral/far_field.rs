@@ -29,18 +29,47 @@
 //! at most `(N+1) g^(N+1) / (4 (1-g)^2 (1-q)^2)`; cutting `mu_n` at `i <= J` errs by at most
 //! `Z2^n V(lambda Z2) lambda^-(J+1)/((1 - 1/lambda)(1-q))`, and `r_k e^(n x_k) Z2^n <= g^n/4` sums over `k` and `n`
 //! to at most `count * g/(1-g)/2` times the rest.
+//!
+//! For other packets `v` is another power series with its own majorant ([`FarWeights`]), of either sign; all that is used of
+//! it is `|v| <= 1` on the far nodes.
 
 use super::cone_nodes::Powers;
-use super::nodes::{Nodes, fixed};
-use super::plan::{Plan, far_series_length};
+use super::near_field::{Lattice, Weights};
+use super::nodes::fixed;
+use super::plan::far_series_length;
 use super::{BOUND_BITS, Setting, exp_minus_upper};
 use crate::arithmetic::{Bits, Magnitude, Real};
 use crate::functions::elementary::exp;
 use crate::routes::{Effort, RouteFailure};
 use rug::Integer;
 
+/// The weights `v/4` beyond the near nodes, as a power series in `z = e^-x`.
+pub(in crate::routes) trait FarWeights {
+    /// `alpha_i Z^i` for `i < count`.
+    fn coefficients(&self, start: &Real, count: usize, bits: Bits) -> Vec<Real>;
+
+    /// `V(r)`, at least `Sum |alpha_i| r^i`; infinite where the series is not known to converge.
+    fn majorant(&self, radius: &Real) -> Magnitude;
+
+    /// Length of the series from rapidity `x` for errors near `exp(-goal)`, and a ratio `lambda` that proves it.
+    fn series_length(&self, x: f64, goal: f64) -> (usize, f64);
+
+    /// What replacing the weights from `z = Z` on by `v/4` changes at most in `S`.
+    fn replacement_error(&self, start: &Real) -> Magnitude;
+}
+
+/// Nodes and lengths of the series.
+pub(in crate::routes) struct FarPlan {
+    /// The nodes; the step is `ln 2 / p`.
+    pub lattice: Lattice,
+    /// Terms of the far-field power series, as the largest `i + j`.
+    pub series_terms: usize,
+    /// Terms of the expansion that couples near and far nodes.
+    pub cross_terms: usize,
+}
+
 /// What the far nodes add.
-pub(super) struct FarField {
+pub(in crate::routes) struct FarField {
     /// To the double sum, without `h^2`.
     pub sum: Real,
     /// Error of `S` from replacing the weights.
@@ -48,16 +77,22 @@ pub(super) struct FarField {
 }
 
 /// Sums the far-far and the cross block.
-pub(super) fn sum(setting: &Setting, nodes: &Nodes, plan: &Plan, effort: &Effort) -> Result<FarField, RouteFailure> {
-    let geometry = Geometry::new(setting, plan);
-    let coefficients = geometry.coefficients(setting, plan, &geometry.start);
-    let far = far_far(&geometry, &coefficients, plan, effort)?;
-    let cross = cross(setting, &geometry, nodes, plan, effort)?;
-    let mut total = far.shift(-4).add(&cross, plan.bits);
+pub(in crate::routes) fn sum(
+    far: &dyn FarWeights,
+    nodes: &Weights<'_>,
+    plan: &FarPlan,
+    effort: &Effort,
+) -> Result<FarField, RouteFailure> {
+    let geometry = Geometry::new(far, plan);
+    let bits = plan.lattice.bits;
+    let coefficients = far.coefficients(&geometry.start, plan.series_terms.max(geometry.outer_terms) + 1, bits);
+    let block = far_far(&geometry, &coefficients, plan, effort)?;
+    let cross = cross(far, &geometry, nodes, plan, effort)?;
+    let mut total = block.shift(-4).add(&cross, bits);
     if crate::spoil::is_active(crate::spoil::Fault::FarFieldSign) {
         total = total.neg();
     }
-    Ok(FarField { sum: total, replacement_error: geometry.replacement_error(setting) })
+    Ok(FarField { sum: total, replacement_error: far.replacement_error(&geometry.start) })
 }
 
 struct Geometry {
@@ -76,17 +111,17 @@ struct Geometry {
 }
 
 impl Geometry {
-    fn new(setting: &Setting, plan: &Plan) -> Geometry {
+    fn new(far: &dyn FarWeights, far_plan: &FarPlan) -> Geometry {
+        let plan = &far_plan.lattice;
         let bits = plan.bits;
         let step = plan.step_ball(bits);
         let at = |index: usize| exp(&step.mul_i64(-(index as i64), bits), bits);
-        let h = plan.step_estimate();
+        let h = step.to_f64();
         let goal = f64::from(plan.scale) * std::f64::consts::LN_2;
-        let time = setting.time.to_f64();
-        let (_, lambda) = far_series_length(time, (plan.near as f64 + 1.0) * h, goal);
-        let (outer_terms, outer_lambda) = far_series_length(time, (plan.last as f64 + 1.0) * h, goal);
+        let (_, lambda) = far.series_length((plan.near as f64 + 1.0) * h, goal);
+        let (outer_terms, outer_lambda) = far.series_length((plan.last as f64 + 1.0) * h, goal);
         let one = Real::from_i64(1);
-        let most = plan.series_terms.max(plan.cross_terms + outer_terms) + 2;
+        let most = far_plan.series_terms.max(far_plan.cross_terms + outer_terms) + 2;
         let mut geometric = vec![Real::whole_line()];
         let decay = exp(&step.neg(), bits);
         let mut power = decay.clone();
@@ -105,13 +140,13 @@ impl Geometry {
             outer_terms,
         }
     }
+}
 
-    /// `alpha_i Z^i` for `i = 0..`, by the recurrence with all terms scaled.
-    fn coefficients(&self, setting: &Setting, plan: &Plan, start: &Real) -> Vec<Real> {
-        let bits = plan.bits;
+impl FarWeights for Setting {
+    /// By the recurrence with all terms scaled.
+    fn coefficients(&self, start: &Real, count: usize, bits: Bits) -> Vec<Real> {
         let square = start.square(bits);
-        let ratio = setting.time.mul(start, bits).neg();
-        let count = plan.series_terms.max(self.outer_terms) + 1;
+        let ratio = self.time.mul(start, bits).neg();
         let mut exponential = vec![Real::from_i64(1)];
         let mut alpha: Vec<Real> = Vec::with_capacity(count);
         for i in 0..count {
@@ -127,8 +162,7 @@ impl Geometry {
         alpha
     }
 
-    /// `V(lambda Z)` bounded above, infinite unless `lambda Z < 1`.
-    fn majorant(&self, setting: &Setting, radius: &Real) -> Magnitude {
+    fn majorant(&self, radius: &Real) -> Magnitude {
         let bits = BOUND_BITS;
         let one = Real::from_i64(1);
         let square = radius.square(bits);
@@ -136,13 +170,17 @@ impl Geometry {
         if !below.certainly_positive() {
             return Magnitude::INFINITY;
         }
-        let growth = exp(&setting.time.mul(radius, bits), bits);
+        let growth = exp(&self.time.mul(radius, bits), bits);
         one.add(&square, bits).div(&below, bits).mul(&growth, bits).abs_upper()
     }
 
-    fn replacement_error(&self, setting: &Setting) -> Magnitude {
-        let at = |rate: &Real| exp_minus_upper(&rate.div(&self.start, BOUND_BITS));
-        let rho = at(&setting.time).add(at(&setting.half_width)).shift(-2);
+    fn series_length(&self, x: f64, goal: f64) -> (usize, f64) {
+        far_series_length(self.time.to_f64(), x, goal)
+    }
+
+    fn replacement_error(&self, start: &Real) -> Magnitude {
+        let at = |rate: &Real| exp_minus_upper(&rate.div(start, BOUND_BITS));
+        let rho = at(&self.time).add(at(&self.half_width)).shift(-2);
         rho.mul(Magnitude::from_u64(5)).shift(-2)
     }
 }
@@ -183,8 +221,8 @@ impl FixedList {
 /// `A^2/(1 - Z^2) =: B` and off by at most `e_g = (2 A e_a + e_a^2 2^-s + 2 + B e_z)/(1 - Z^2 - e_z 2^-s)`. With weights
 /// `|s_i + s_j - 1/2| <= 2 S` off by `2 e_s` and `1/(1 - q^n) <= G` off by `e_c`, each of the at most `J^2/4` pairs
 /// (counted twice off the diagonal) adds at most `G (2 S e_g + 2 B e_s + 2 e_g e_s 2^-s) + 2 (S + e_s 2^-s)(B + e_g 2^-s) e_c`.
-fn far_far(geometry: &Geometry, alpha: &[Real], plan: &Plan, effort: &Effort) -> Result<Real, RouteFailure> {
-    let (bits, scale, most) = (plan.bits, plan.bits, plan.series_terms);
+fn far_far(geometry: &Geometry, alpha: &[Real], plan: &FarPlan, effort: &Effort) -> Result<Real, RouteFailure> {
+    let (bits, scale, most) = (plan.lattice.bits, plan.lattice.bits, plan.series_terms);
     let square = geometry.start.square(bits);
     let (minus_square, square_error) = fixed(&square.neg(), scale)?;
     let alpha = FixedList::new(&alpha[..most], scale)?;
@@ -233,8 +271,8 @@ fn far_far(geometry: &Geometry, alpha: &[Real], plan: &Plan, effort: &Effort) ->
 }
 
 /// `s_i` for `i = 1..=most` at index `i`.
-fn shares(geometry: &Geometry, most: usize, plan: &Plan) -> Vec<Real> {
-    let bits = plan.bits;
+fn shares(geometry: &Geometry, most: usize, plan: &FarPlan) -> Vec<Real> {
+    let bits = plan.lattice.bits;
     let mut list = vec![Real::whole_line(), first_share(geometry, plan)];
     for i in 1..most {
         list.push(geometry.geometric[i].sub(&list[i], bits));
@@ -243,8 +281,8 @@ fn shares(geometry: &Geometry, most: usize, plan: &Plan) -> Vec<Real> {
 }
 
 /// `s_1 = 1/2 + Sum_{r>=1} q^r/(1 + q^r)`.
-fn first_share(geometry: &Geometry, plan: &Plan) -> Real {
-    let bits = plan.bits;
+fn first_share(geometry: &Geometry, plan: &FarPlan) -> Real {
+    let bits = plan.lattice.bits;
     let one = Real::from_i64(1);
     let q = one.sub(&one.div(&geometry.geometric[1], bits), bits);
     alternating_lambert(&q, bits).add(&one.shift(-1), bits)
@@ -282,9 +320,9 @@ fn lambert(x: &Real, bits: Bits) -> Real {
 
 impl Geometry {
     /// Tail of the far-far series beyond `i + j = series_terms`.
-    fn far_tail(&self, setting: &Setting, plan: &Plan) -> Magnitude {
+    fn far_tail(&self, far: &dyn FarWeights, plan: &FarPlan) -> Magnitude {
         let radius = self.lambda.mul(&self.start, BOUND_BITS);
-        let growth = self.majorant(setting, &radius);
+        let growth = far.majorant(&radius);
         let square = radius.square(BOUND_BITS);
         let below = Real::from_i64(1).sub(&square, BOUND_BITS).abs_lower();
         let series = square.abs_upper().shift(1).mul(growth).mul(growth).div(below);
@@ -303,15 +341,15 @@ impl Geometry {
 /// as arguments do not exceed one, errors only add up, together with those of the coefficients. Terms left out because
 /// `u^n < 2^-scale` sum to at most `size` units.
 fn cross(
-    setting: &Setting,
+    far: &dyn FarWeights,
     geometry: &Geometry,
-    nodes: &Nodes,
-    plan: &Plan,
+    nodes: &Weights<'_>,
+    plan: &FarPlan,
     effort: &Effort,
 ) -> Result<Real, RouteFailure> {
-    let (coefficients, errors) = cross_coefficients(setting, geometry, plan)?;
-    let scale = plan.scale;
-    let arguments = arguments(plan)?;
+    let (coefficients, errors) = cross_coefficients(far, geometry, plan)?;
+    let scale = plan.lattice.scale;
+    let arguments = arguments(&plan.lattice)?;
     let mut total = Integer::new();
     for (index, (ratio, pair)) in nodes.ratios.iter().zip(&arguments).enumerate() {
         if index % 16 == 0 {
@@ -330,19 +368,19 @@ fn cross(
     // |p| <= size, so an error e of the ratios gives 2 e size; Horner's error is weighted by r <= 1/4.
     let from_ratios = nodes.error_units.mul(size).shift(1);
     let units = steps.add(errors).add(from_ratios).mul(Magnitude::from_u64(count));
-    let value = Real::from_scaled(&total, -2 * i64::from(scale)).round(plan.bits);
-    let tails = geometry.cross_tail(setting, plan, count).add(geometry.far_tail(setting, plan).shift(-4));
+    let value = Real::from_scaled(&total, -2 * i64::from(scale)).round(plan.lattice.bits);
+    let tails = geometry.cross_tail(far, plan, count).add(geometry.far_tail(far, plan).shift(-4));
     Ok(value.widen(units.shift(-i64::from(scale))).widen(tails))
 }
 
 /// `(-1)^(n-1) mu_n e^(n x_K)` for `n = 1..=cross_terms` in fixed point, and the sum of their errors.
 fn cross_coefficients(
-    setting: &Setting,
+    far: &dyn FarWeights,
     geometry: &Geometry,
-    plan: &Plan,
+    plan: &FarPlan,
 ) -> Result<(Vec<Integer>, Magnitude), RouteFailure> {
-    let bits = plan.bits;
-    let alpha = geometry.coefficients(setting, plan, &geometry.outer);
+    let bits = plan.lattice.bits;
+    let alpha = far.coefficients(&geometry.outer, geometry.outer_terms + 1, bits);
     let gap = geometry.outer.mul(&geometry.edge, bits);
     let mut power = gap.clone();
     let mut list = Vec::with_capacity(plan.cross_terms);
@@ -362,7 +400,7 @@ fn cross_coefficients(
         let moment = Real::from_scaled(&sum, -2 * i64::from(bits)).round(bits).widen(product_error);
         let value = moment.mul(&power, bits);
         let signed = if n % 2 == 1 { value } else { value.neg() };
-        let (fixed, error) = signed.to_fixed(i64::from(plan.scale)).ok_or(RouteFailure::OutOfReach {
+        let (fixed, error) = signed.to_fixed(i64::from(plan.lattice.scale)).ok_or(RouteFailure::OutOfReach {
             reason: "a moment of the far field has no finite enclosure".to_owned(),
         })?;
         errors = errors.add(error);
@@ -373,7 +411,7 @@ fn cross_coefficients(
 }
 
 /// `(e^(x_k - x_K), e^(-x_k - x_K))` in fixed point for the near nodes, each off by less than two units.
-fn arguments(plan: &Plan) -> Result<Vec<(Integer, Integer)>, RouteFailure> {
+fn arguments(plan: &Lattice) -> Result<Vec<(Integer, Integer)>, RouteFailure> {
     let powers = Powers::new(plan, plan.scale)?;
     Ok((plan.first..=plan.near).map(|k| (powers.at(plan.near - k), powers.at(plan.near + k))).collect())
 }
@@ -404,7 +442,7 @@ fn horner(coefficients: &[Integer], argument: &Integer, scale: u32) -> Integer {
 
 impl Geometry {
     /// Cut-off errors of the cross block.
-    fn cross_tail(&self, setting: &Setting, plan: &Plan, count: u64) -> Magnitude {
+    fn cross_tail(&self, far: &dyn FarWeights, plan: &FarPlan, count: u64) -> Magnitude {
         let bits = BOUND_BITS;
         let one = Real::from_i64(1);
         let gap = self.outer.mul(&self.edge, bits);
@@ -415,7 +453,7 @@ impl Geometry {
         let series = ratio.pow(terms + 1).mul(Magnitude::from_u64(terms + 1)).div(below.mul_down(below));
         let series = series.mul(first).mul(first).shift(-2);
         let radius = self.outer_lambda.mul(&self.outer, bits);
-        let growth = self.majorant(setting, &radius);
+        let growth = far.majorant(&radius);
         let shrink = one.sub(&one.div(&self.outer_lambda, bits), bits).abs_lower();
         let moments = growth.mul(inverse_power(&self.outer_lambda, self.outer_terms + 1)).mul(first).div(shrink);
         let spread = ratio.div(below).mul(Magnitude::from_u64(count)).shift(-1);

@@ -62,7 +62,7 @@
 //! Rounding is followed by balls and, inside the double sum, by the bound in [`near_field`].
 
 mod cone_nodes;
-mod far_field;
+pub(in crate::routes) mod far_field;
 pub(in crate::routes) mod massless;
 pub(in crate::routes) mod near_field;
 mod nodes;
@@ -109,7 +109,9 @@ impl Route for Spectral {
             ("left cut-off bound", nodes.left_cut_error()),
         ];
         if plan.far_field {
-            let far = far_field::sum(&setting, &nodes, &plan, effort)?;
+            let (series_terms, cross_terms) = (plan.series_terms, plan.cross_terms);
+            let far_plan = far_field::FarPlan { lattice, series_terms, cross_terms };
+            let far = far_field::sum(&setting, &nodes.all(), &far_plan, effort)?;
             sum = sum.add(&far.sum, plan.bits);
             errors.push(("far-field replacement bound", far.replacement_error));
         } else {

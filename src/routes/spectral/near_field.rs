@@ -26,6 +26,7 @@ use rug::integer::Order;
 use rug::{Integer, Rational};
 
 /// The nodes of a double sum and its precision.
+#[derive(Clone)]
 pub(in crate::routes) struct Lattice {
     /// Step `h` as a multiple of `ln 2`.
     pub step: Rational,
@@ -47,6 +48,11 @@ impl Lattice {
     /// The step as a ball.
     pub(in crate::routes) fn step_ball(&self, bits: Bits) -> Real {
         Real::from_rational(&self.step, bits).mul(&ln_2(bits), bits)
+    }
+
+    /// Number of steps in `ln 2`, where it is a whole number.
+    pub(in crate::routes) fn octave_parts(&self) -> usize {
+        self.step.denom().to_usize().unwrap_or(usize::MAX)
     }
 }
 

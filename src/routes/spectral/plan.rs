@@ -90,11 +90,6 @@ impl Plan {
         ratio.mul(&ln_2(bits), bits)
     }
 
-    /// The step in double precision.
-    pub(super) fn step_estimate(&self) -> f64 {
-        to_f64(&self.step) * LN_2
-    }
-
     /// Number of steps in `ln 2`, for a region that begins at the cone.
     pub(super) fn octave_parts(&self) -> usize {
         self.step.denom().to_usize().unwrap_or(usize::MAX)
