@@ -42,7 +42,11 @@ fn every_fault_is_noticed() {
                 [1u32, 2, 3, 5, 8, 13, 21, 30].iter().all(|digits| enclosure(tail, *digits).contains(truth))
             })
         };
-        for fault in [Fault::TrapezoidErrorForgotten, Fault::CutOffForgotten] {
+        for fault in [Fault::TrapezoidErrorForgotten, Fault::CutOffForgotten, Fault::FarFieldSign] {
+            if massless && fault == Fault::FarFieldSign {
+                // There is no far field in that sum.
+                continue;
+            }
             activate(None);
             assert!(contains(), "{fault:?}: the check fails without the fault");
             activate(Some(fault));

@@ -44,6 +44,18 @@ impl EdgeSeries<'_> {
         1.0 / (number + number.hypot(1.0))
     }
 
+    /// Ratios `lambda` to try from rapidity `x`, and about `ln V(lambda Z)` once or twice, whichever is larger.
+    fn ratios(&self, x: f64) -> impl Iterator<Item = (f64, f64)> {
+        let z = (-x).exp();
+        let most = 0.9 * self.radius();
+        let ratios = (1..40).map(|index| 1.5f64.powi(index)).take_while(move |lambda| lambda * z <= most);
+        ratios.map(move |lambda| {
+            let radius = Real::from_float(rug::Float::with_val(53, lambda * z));
+            let size = self.majorant(&radius).log2_estimate() * LN_2;
+            (lambda, size.max(2.0 * size) + 8.0)
+        })
+    }
+
     /// `rho` from `z` on.
     pub(super) fn error(&self, start: &Real) -> Magnitude {
         let bits = BOUND_BITS;
@@ -101,22 +113,19 @@ impl FarWeights for EdgeSeries<'_> {
     }
 
     fn series_length(&self, x: f64, goal: f64) -> (usize, f64) {
-        let z = (-x).exp();
-        let most = 0.9 * self.radius();
         let mut best = (f64::INFINITY, 2.0);
-        for index in 1..40 {
-            let lambda = 1.5f64.powi(index);
-            if lambda * z > most {
-                break;
-            }
-            let radius = Real::from_float(rug::Float::with_val(53, lambda * z));
-            let growth = 2.0 * self.majorant(&radius).log2_estimate() * LN_2 + 8.0;
+        for (lambda, growth) in self.ratios(x) {
             let terms = ((goal + growth) / lambda.ln()).max(2.0);
             if terms < best.0 {
                 best = (terms, lambda);
             }
         }
         (best.0.min(1e6) as usize + 2, best.1)
+    }
+
+    fn ratio_for(&self, x: f64, _goal: f64, terms: usize) -> f64 {
+        let bound = |(lambda, growth): (f64, f64)| (growth - terms as f64 * lambda.ln(), lambda);
+        self.ratios(x).map(bound).fold((f64::INFINITY, 2.0), |best, new| if new.0 < best.0 { new } else { best }).1
     }
 
     fn replacement_error(&self, start: &Real) -> Magnitude {

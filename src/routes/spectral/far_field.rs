@@ -54,6 +54,11 @@ pub(in crate::routes) trait FarWeights {
     /// Length of the series from rapidity `x` for errors near `exp(-goal)`, and a ratio `lambda` that proves it.
     fn series_length(&self, x: f64, goal: f64) -> (usize, f64);
 
+    /// The ratio `lambda` with the best bound for so many terms.
+    fn ratio_for(&self, x: f64, goal: f64, _terms: usize) -> f64 {
+        self.series_length(x, goal).1
+    }
+
     /// What replacing the weights from `z = Z` on by `v/4` changes at most in `S`.
     fn replacement_error(&self, start: &Real) -> Magnitude;
 }
@@ -118,7 +123,7 @@ impl Geometry {
         let at = |index: usize| exp(&step.mul_i64(-(index as i64), bits), bits);
         let h = step.to_f64();
         let goal = f64::from(plan.scale) * std::f64::consts::LN_2;
-        let (_, lambda) = far.series_length((plan.near as f64 + 1.0) * h, goal);
+        let lambda = far.ratio_for((plan.near as f64 + 1.0) * h, goal, far_plan.series_terms);
         let (outer_terms, outer_lambda) = far.series_length((plan.last as f64 + 1.0) * h, goal);
         let one = Real::from_i64(1);
         let most = far_plan.series_terms.max(far_plan.cross_terms + outer_terms) + 2;
