@@ -24,7 +24,7 @@ pub enum Fault {
     BesselSeriesCut = 7,
     /// The power series of the dilogarithm is cut too early, without its tail bound.
     DilogarithmSeriesCut = 8,
-    /// What lies beyond the last node of the spectral sum of a general packet is left out of the bounds.
+    /// The spectral sum of a general packet is cut too early, without the bound of what lies beyond the last node.
     CutOffForgotten = 9,
 }
 

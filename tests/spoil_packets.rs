@@ -28,18 +28,21 @@ fn tails(massless: bool) -> Vec<CutTail> {
     packets.iter().flat_map(|packet| [place(packet, q(0, 1)), place(packet, q(1, 2))]).collect()
 }
 
-fn enclosure(tail: &CutTail, digits: u32) -> Interval {
-    tail.evaluate(digits, &Effort::default()).unwrap().interval
+/// `None` where the route gives up: a sum of the wrong sign is no probability.
+fn enclosure(tail: &CutTail, digits: u32) -> Option<Interval> {
+    tail.evaluate(digits, &Effort::default()).ok().map(|outcome| outcome.interval)
 }
 
 #[test]
 fn every_fault_is_noticed() {
     for massless in [false, true] {
         let tails = tails(massless);
-        let truths: Vec<Interval> = tails.iter().map(|tail| enclosure(tail, 50)).collect();
+        let truths: Vec<Interval> = tails.iter().map(|tail| enclosure(tail, 50).unwrap()).collect();
         let contains = || {
             tails.iter().zip(&truths).all(|(tail, truth)| {
-                [1u32, 2, 3, 5, 8, 13, 21, 30].iter().all(|digits| enclosure(tail, *digits).contains(truth))
+                [1u32, 2, 3, 5, 8, 13, 21, 30]
+                    .iter()
+                    .all(|digits| enclosure(tail, *digits).is_some_and(|found| found.contains(truth)))
             })
         };
         for fault in [Fault::TrapezoidErrorForgotten, Fault::CutOffForgotten, Fault::FarFieldSign] {

@@ -332,7 +332,9 @@ impl Sizes {
         };
         let low = left.max(if at_cone { 0.0 } else { centre.max(0.0) });
         let high = low + goal + (goal + low + 2.0).ln() + 4.0;
-        (left, coarse_bisect(low, high, h, enough))
+        let right = coarse_bisect(low, high, h, enough);
+        let cut = if crate::spoil::is_active(crate::spoil::Fault::CutOffForgotten) { 0.2 * (right - low) } else { 0.0 };
+        (left, right - cut)
     }
 
     /// Where the closed form can begin, if it saves nodes.

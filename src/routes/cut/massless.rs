@@ -167,7 +167,9 @@ impl Setting {
                 }
             }
         }
-        let step = dyadic(best.0.min(1.0), 24);
+        // The other two bounds would hide the fault: make it count.
+        let coarser = if crate::spoil::is_active(crate::spoil::Fault::TrapezoidErrorForgotten) { 1.5 } else { 1.0 };
+        let step = dyadic(best.0.min(1.0) * coarser, 24);
         let h = step.to_f64();
         // Q T u^2 (1 + 2h) below the goal on the left.
         let left = -0.5 * (goal + ln(bounds.weighted_majorant()) + time.ln() + (1.0 + 2.0 * h).ln());
@@ -176,6 +178,8 @@ impl Setting {
             weight + (2.0 * (x + 3.0 + h)).ln() - x - distance * x.exp() < -goal
         };
         let right = coarse_bisect(0.0, goal + (goal + 6.0).ln() + 3.0, h, enough);
+        let cut = if crate::spoil::is_active(crate::spoil::Fault::CutOffForgotten) { 0.2 * right } else { 0.0 };
+        let right = right - cut;
         let (first, last) = ((left / h).floor(), (right / h).ceil() + 1.0);
         let count = last - first + 1.0;
         if count.is_nan() || count > MAX_NODES {
