@@ -49,32 +49,25 @@
 //!
 //! Rounding: balls, and the bound of the near field of the box (which is about absolute values).
 
+mod nodes;
+mod plan;
+
 use super::amplitude::{CutAmplitude, EdgeWave, PreparedAmplitude};
 use super::edge::EdgeSeries;
 use super::{Problem, SideSum, exponent_above, shown, size_bound};
-use crate::arithmetic::{Bits, Complex, Magnitude, Real};
+use crate::arithmetic::{Bits, Magnitude, Real};
 use crate::functions::elementary::{cos, exp, exp_m1, pi, sqrt};
-use crate::routes::estimate::{bisect, dyadic, proper_distance};
-use crate::routes::spectral::far_field::{self, FarPlan, FarWeights};
-use crate::routes::spectral::near_field::{self, Lattice, Tangents, Weights};
-use crate::routes::spectral::{BOUND_BITS, one_minus_exp};
+use crate::routes::spectral::BOUND_BITS;
+use crate::routes::spectral::far_field::{self, FarPlan};
+use crate::routes::spectral::near_field::{self, Lattice, Tangents};
 use crate::routes::{Effort, RouteFailure};
-use rug::{Integer, Rational};
-use std::f64::consts::{FRAC_PI_2, LN_2, PI};
+use nodes::Nodes;
+use plan::Plan;
+use rug::Rational;
+use std::f64::consts::{LN_2, PI};
 
-/// More nodes than this are refused.
-pub(super) const MAX_NODES: f64 = 60_000.0;
-
-/// From this many nodes on, the double sum is done by one big-integer product.
-const PRODUCT_FROM: usize = 64;
-
-/// Where the far field begins, and its series.
-struct FarChoice {
-    near: f64,
-    last: f64,
-    series_terms: usize,
-    cross_terms: usize,
-}
+pub(super) use nodes::no_enclosure;
+pub(super) use plan::{MAX_NODES, coarse_bisect};
 
 /// What the bounds need, in few bits.
 struct Sizes {
@@ -87,15 +80,6 @@ struct Sizes {
     /// `E`
     proper_distance: Real,
     tail: Box<dyn PreparedAmplitude>,
-}
-
-/// Nodes, strip and precision, chosen in double precision.
-struct Plan {
-    lattice: Lattice,
-    /// `None` stands for `pi/2`.
-    strip: Option<Rational>,
-    /// Terms of the two series of the far field, if it is used.
-    far: Option<(usize, usize)>,
 }
 
 pub(super) fn sum(
@@ -273,247 +257,5 @@ impl Sizes {
         let below = one.sub(&exp(&x.shift(1).neg(), bits), bits);
         let factor = x.add(&one, bits).mul(&exp(&exponent.neg(), bits), bits).div(&below, bits);
         factor.abs_upper().mul(self.tail_weight(&x))
-    }
-
-    fn plan(&self, problem: &Problem, place: &Place, goal: f64) -> Result<Plan, RouteFailure> {
-        let (t, d) = (problem.time.to_f64(), problem.distance.to_f64());
-        let distance = proper_distance(t, d);
-        let (width, strip) = self.choose_step(distance, goal);
-        // At the cone whole fractions of ln 2, for the far field.
-        let step = if d == 0.0 {
-            Rational::from((1, (LN_2 / width).ceil().clamp(1.0, 1e9) as u32))
-        } else {
-            dyadic(width / LN_2, 24)
-        };
-        let h = step.to_f64() * LN_2;
-        let (left, right) = self.range(place, d == 0.0, goal, h);
-        let far = if d == 0.0 { self.far_plan(problem, goal, h, right) } else { None };
-        let (near, last) = far.as_ref().map_or((right, right), |far| (far.near, far.last));
-        let first = (left / h).floor().max(1.0);
-        let (near, last) = ((near / h).ceil() + 1.0, (last / h).ceil() + 1.0);
-        let count = last.max(first) - first + 1.0;
-        if count.is_nan() || count > MAX_NODES {
-            let reason = format!("the spectral sum would need {count:.0} nodes, more than {MAX_NODES:.0}");
-            return Err(RouteFailure::OutOfReach { reason });
-        }
-        let scale = (goal / LN_2 + 2.0 * count.log2() + 8.0).max(48.0);
-        // Exponents of size up to E lose log2(E) bits, huge times a few more, the recurrence of the nodes their number.
-        let bits = scale + distance.max(1.0).log2() + (1.0 + t).log2() + count.log2() + 20.0;
-        let lattice = Lattice {
-            step,
-            first: first as usize,
-            near: near.max(first) as usize,
-            last: last.max(first) as usize,
-            bits: bits as u32,
-            scale: scale as u32,
-            product_from: PRODUCT_FROM,
-        };
-        Ok(Plan {
-            lattice,
-            strip: strip.map(|b| dyadic(b, 30)),
-            far: far.map(|far| (far.series_terms, far.cross_terms)),
-        })
-    }
-
-    /// Where the cut-off bounds reach the goal on the left and on the right.
-    fn range(&self, place: &Place, at_cone: bool, goal: f64, h: f64) -> (f64, f64) {
-        let (fall, rise) = (place.left_root.to_f64(), place.right_root.to_f64());
-        let exponent = |x: f64| (fall * (-x / 2.0).exp() - rise * (x / 2.0).exp()).powi(2);
-        let centre = if at_cone { f64::INFINITY } else { (fall / rise).ln() };
-        let left = if at_cone {
-            (place.time.to_f64() / goal).ln().max(0.0)
-        } else {
-            bisect(0.0, centre, |x| exponent(x) < goal)
-        };
-        let enough = |x: f64| {
-            let beyond = if x > centre { exponent(x) } else { 0.0 };
-            let weight = self.tail_weight(&Real::from_float(rug::Float::with_val(53, x))).log2_estimate() * LN_2;
-            weight + (x + 1.0).ln() - x - beyond < -goal
-        };
-        let low = left.max(if at_cone { 0.0 } else { centre.max(0.0) });
-        let high = low + goal + (goal + low + 2.0).ln() + 4.0;
-        let right = coarse_bisect(low, high, h, enough);
-        let cut = if crate::spoil::is_active(crate::spoil::Fault::CutOffForgotten) { 0.2 * (right - low) } else { 0.0 };
-        (left, right - cut)
-    }
-
-    /// Where the closed form can begin, if it saves nodes.
-    fn far_plan(&self, problem: &Problem, goal: f64, h: f64, right: f64) -> Option<FarChoice> {
-        let edge = self.tail.edge();
-        let series = self.edge_series(&edge, problem, BOUND_BITS, false);
-        let lowest = problem.time.to_f64().ln().max(1.0 - series.radius().ln());
-        let good = |x: f64| {
-            let z = Real::from_float(rug::Float::with_val(53, (-x).exp()));
-            series.error(&z).log2_estimate() * LN_2 < -goal
-        };
-        if lowest >= right || !good(right) {
-            return None;
-        }
-        let near = coarse_bisect(lowest, right, h, good);
-        // More near nodes make the cross series short: balance their number against its terms.
-        let last = near + 2.5 + 0.005 * goal;
-        let (series_terms, _) = series.series_length(near + h, goal);
-        let cross_terms = ((goal + 6.0) / (last - near + h)).ceil() + 2.0;
-        let worthwhile = last + 1.0 < right && (series_terms as f64) < 40.0 + 4.0 * goal;
-        worthwhile.then_some(FarChoice { near, last, series_terms, cross_terms: cross_terms as usize })
-    }
-
-    /// The largest step for which Theorem 3 reaches `exp(-goal)`, with the strip that allows it.
-    fn choose_step(&self, distance: f64, goal: f64) -> (f64, Option<f64>) {
-        let wide = self.constant(&Real::zero()).log2_estimate() * LN_2;
-        let narrow = self.variation.log2_estimate() * LN_2;
-        let step_for =
-            |b: f64, constant: f64| 2.0 * PI * b / (goal + 6f64.ln() + constant + distance * (1.0 - b.cos())).max(1.0);
-        let mut best = (step_for(FRAC_PI_2, wide), None);
-        for index in 1..240 {
-            let b = FRAC_PI_2 * 1.03f64.powi(-index);
-            let step = step_for(b, (narrow - b.cos().ln()).min(wide));
-            if step > best.0 {
-                best = (step, Some(b));
-            }
-        }
-        (best.0.min(2.0), best.1)
-    }
-}
-
-/// As [`bisect`], but no finer than `width`.
-pub(super) fn coarse_bisect(mut low: f64, mut high: f64, width: f64, holds: impl Fn(f64) -> bool) -> f64 {
-    if holds(low) {
-        return low;
-    }
-    while high - low > 0.5 * width {
-        let middle = 0.5 * (low + high);
-        if holds(middle) { high = middle } else { low = middle }
-    }
-    high
-}
-
-/// The weights of all parts of the amplitude in fixed point.
-struct Nodes {
-    weights: [Vec<Integer>; 2],
-    ratios: [Vec<Integer>; 2],
-    error_units: Magnitude,
-    count: usize,
-}
-
-impl Nodes {
-    fn new(
-        amplitude: &dyn CutAmplitude,
-        problem: &Problem,
-        sizes: &Sizes,
-        lattice: &Lattice,
-        effort: &Effort,
-    ) -> Result<Nodes, RouteFailure> {
-        let mut nodes = Nodes {
-            weights: [Vec::new(), Vec::new()],
-            ratios: [Vec::new(), Vec::new()],
-            error_units: Magnitude::ZERO,
-            count: if amplitude.is_real() { 1 } else { 2 },
-        };
-        let mut tables = Tables::new(amplitude, problem, lattice, lattice.bits)?;
-        for k in lattice.first..=lattice.last {
-            effort.check()?;
-            loop {
-                let (weight, ratio) = tables.weight(sizes, k);
-                let scale = i64::from(lattice.scale);
-                let radius = weight.re.radius().max(weight.im.radius()).shift(scale).log2_estimate();
-                // Cancellation inside the amplitude is met with more bits, within reason.
-                if radius > 3.0 && tables.bits < 64 * lattice.bits + 4096 {
-                    let missing = if radius.is_finite() { radius.min(1e6) as u32 } else { tables.bits };
-                    let more = (tables.bits + missing + 32).max(tables.bits + tables.bits / 4);
-                    effort.allow_bits(more)?;
-                    tables = Tables::new(amplitude, problem, lattice, more)?;
-                    continue;
-                }
-                nodes.push(&weight, &ratio, scale)?;
-                break;
-            }
-        }
-        Ok(nodes)
-    }
-
-    fn push(&mut self, weight: &Complex, ratio: &Complex, scale: i64) -> Result<(), RouteFailure> {
-        let parts = [(&weight.re, &ratio.re), (&weight.im, &ratio.im)];
-        for (index, (weight, ratio)) in parts.into_iter().enumerate().take(self.count) {
-            for (list, value) in [(&mut self.weights[index], weight), (&mut self.ratios[index], ratio)] {
-                let (integer, error) = value.to_fixed(scale).ok_or_else(no_enclosure)?;
-                self.error_units = self.error_units.max(error);
-                list.push(integer);
-            }
-        }
-        Ok(())
-    }
-
-    fn parts(&self) -> impl Iterator<Item = Weights<'_>> {
-        (0..self.count).map(|index| Weights {
-            weights: &self.weights[index],
-            ratios: &self.ratios[index],
-            error_units: self.error_units,
-        })
-    }
-}
-
-pub(super) fn no_enclosure() -> RouteFailure {
-    RouteFailure::OutOfReach { reason: "a term of the spectral sum has no finite enclosure".to_owned() }
-}
-
-/// Everything for evaluating weights at one precision.
-struct Tables {
-    bits: Bits,
-    amplitude: Box<dyn PreparedAmplitude>,
-    place: Place,
-    at_cone: bool,
-    /// `h/2`
-    half_step: Real,
-    /// `e^(h/2)`
-    growth: Real,
-    /// `e^(kh/2)` at the node reached.
-    half: Option<(usize, Real)>,
-}
-
-impl Tables {
-    fn new(
-        amplitude: &dyn CutAmplitude,
-        problem: &Problem,
-        lattice: &Lattice,
-        bits: Bits,
-    ) -> Result<Tables, RouteFailure> {
-        let half_step = lattice.step_ball(bits + 32).shift(-1);
-        Ok(Tables {
-            bits,
-            amplitude: amplitude.prepare(bits)?,
-            place: Place::new(problem, bits),
-            at_cone: problem.distance == 0,
-            growth: exp(&half_step, bits),
-            half_step,
-            half: None,
-        })
-    }
-
-    /// `e^(kh/2)`, by a product from the node before.
-    fn half_power(&mut self, index: usize) -> Real {
-        let value = match &self.half {
-            Some((at, value)) if *at == index => value.clone(),
-            Some((at, value)) if at + 1 == index => value.mul(&self.growth, self.bits),
-            _ => exp(&self.half_step.mul_i64(index as i64, self.bits + 32), self.bits),
-        };
-        self.half = Some((index, value.clone()));
-        value
-    }
-
-    /// `w` and `w/(2 sinh x)` at the node, in units of `W`.
-    fn weight(&mut self, sizes: &Sizes, index: usize) -> (Complex, Complex) {
-        let bits = self.bits;
-        let half = self.half_power(index);
-        let whole = half.square(bits);
-        let inverse = Real::from_i64(1).div(&whole, bits);
-        let sinh = whole.sub(&inverse, bits).shift(-1);
-        let cosh = whole.add(&inverse, bits).shift(-1);
-        let exponent =
-            if self.at_cone { self.place.time.mul(&inverse, bits) } else { self.place.gap(&half, bits).square(bits) };
-        let rise = one_minus_exp(&self.place.time.mul(&sinh, bits).shift(1), bits, bits);
-        let base = exp(&exponent.neg(), bits).mul(&rise, bits).shift(-2 - sizes.exponent);
-        let ratio = self.amplitude.value(&cosh).mul_real(&base, bits);
-        (ratio.mul_real(&sinh.shift(1), bits), ratio)
     }
 }

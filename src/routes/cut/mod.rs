@@ -24,7 +24,7 @@
 //! that the discretisation bounds rest on. Smoothness at the right edge shortens the sums through a bound of `kappa |F|` on
 //! the real line ([`PreparedAmplitude::tail`]).
 //!
-//! The sums and their bounds: [`massive`], [`massless`]. The precision of a sum follows from a first one with few digits.
+//! The sums and their bounds are in the modules `massive` and `massless`. The precision of a sum follows from a first one with few digits.
 
 mod amplitude;
 mod bspline;
