@@ -1,6 +1,8 @@
 //! The quantities that can be asked for.
 //!
 //! * [`tail`]: the probability of finding a packet beyond a distance outside its light cone.
+//! * [`peak`]: the largest tail over all times.
 
+pub mod peak;
 pub mod tail;
 mod tail_range;
