@@ -1,7 +1,7 @@
 //! The command line as a user meets it: answers, refusals, exit codes, and output that cannot be written.
 //!
 //! Snapshots mask what depends on the machine or on a route's plan: times, bits, nodes, and digits
-//! beyond the seventeenth.
+//! beyond the fourteenth.
 
 #![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
 
@@ -39,15 +39,15 @@ fn masked(answer: &str) -> String {
     answer.lines().map(line).collect::<Vec<_>>().join("\n")
 }
 
-/// A decimal with at most 17 significant digits, the others as one sign.
+/// A decimal with at most 14 significant digits, the others as one sign.
 fn short(word: &str) -> String {
     let (body, exponent) = word.split_once('e').map_or((word, None), |(body, exponent)| (body, Some(exponent)));
     let digits = body.chars().filter(char::is_ascii_digit).collect::<String>();
     let leading = digits.len() - digits.trim_start_matches('0').len();
-    if digits.len() - leading <= 17 || !body.chars().all(|c| c.is_ascii_digit() || c == '.') {
+    if digits.len() - leading <= 14 || !body.chars().all(|c| c.is_ascii_digit() || c == '.') {
         return word.to_owned();
     }
-    let kept = body.chars().take(leading + 17 + 1).collect::<String>();
+    let kept = body.chars().take(leading + 14 + 1).collect::<String>();
     format!("{kept}…{}", exponent.map_or(String::new(), |e| format!("e{e}")))
 }
 
