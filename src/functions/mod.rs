@@ -2,4 +2,5 @@
 
 pub mod bessel_k;
 pub mod complex_elementary;
+pub mod dilogarithm;
 pub mod elementary;

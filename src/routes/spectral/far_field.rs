@@ -34,7 +34,7 @@ use super::cone_nodes::Powers;
 use super::nodes::{Nodes, fixed};
 use super::plan::{Plan, far_series_length};
 use super::{BOUND_BITS, Setting, exp_minus_upper};
-use crate::arithmetic::{Magnitude, Real};
+use crate::arithmetic::{Bits, Magnitude, Real};
 use crate::functions::elementary::exp;
 use crate::routes::{Effort, RouteFailure};
 use rug::Integer;
@@ -242,25 +242,27 @@ fn shares(geometry: &Geometry, most: usize, plan: &Plan) -> Vec<Real> {
     list
 }
 
-/// `s_1 = 1/2 + L(q) - 2 L(q^2)`.
+/// `s_1 = 1/2 + Sum_{r>=1} q^r/(1 + q^r)`.
 fn first_share(geometry: &Geometry, plan: &Plan) -> Real {
     let bits = plan.bits;
     let one = Real::from_i64(1);
     let q = one.sub(&one.div(&geometry.geometric[1], bits), bits);
-    let plain = lambert(&q, plan);
-    let squared = lambert(&q.square(bits), plan);
-    plain.sub(&squared.shift(1), bits).add(&one.shift(-1), bits)
+    alternating_lambert(&q, bits).add(&one.shift(-1), bits)
+}
+
+/// `Sum_{r>=1} q^r/(1 + q^r) = L(q) - 2 L(q^2)` for `0 < q < 1`.
+pub(super) fn alternating_lambert(q: &Real, bits: Bits) -> Real {
+    lambert(q, bits).sub(&lambert(&q.square(bits), bits).shift(1), bits)
 }
 
 /// `L(x) = Sum_{n>=1} x^(n^2) (1 + x^n)/(1 - x^n)` for `0 < x < 1`.
 ///
 /// The terms beyond `N` sum to at most `2 x^((N+1)^2)/(1 - x)^2`: each is at most `2 x^(n^2)/(1 - x)`, and
 /// `Sum_{n>N} x^(n^2) <= x^((N+1)^2)/(1 - x)`.
-fn lambert(x: &Real, plan: &Plan) -> Real {
-    let bits = plan.bits;
+fn lambert(x: &Real, bits: Bits) -> Real {
     let one = Real::from_i64(1);
     let square = x.square(bits);
-    let goal = Magnitude::power_of_two(-i64::from(plan.bits));
+    let goal = Magnitude::power_of_two(-i64::from(bits));
     let mut total = Real::zero();
     // power = x^n, gaussian = x^(n^2), odd = x^(2n+1)
     let (mut power, mut gaussian, mut odd) = (x.clone(), x.clone(), x.mul(&square, bits));

@@ -167,7 +167,8 @@ fn outer_rows(nodes: &Nodes, plan: &Plan, table: &Tangents, effort: &Effort) -> 
     Ok(total)
 }
 
-fn pack<'a>(values: impl Iterator<Item = &'a Integer>, slot: usize) -> Integer {
+/// Non-negative integers side by side, `slot` words of 64 bits for each.
+pub(super) fn pack<'a>(values: impl Iterator<Item = &'a Integer>, slot: usize) -> Integer {
     let mut limbs: Vec<u64> = Vec::new();
     for value in values {
         let end = limbs.len() + slot;
@@ -177,6 +178,7 @@ fn pack<'a>(values: impl Iterator<Item = &'a Integer>, slot: usize) -> Integer {
     Integer::from_digits(&limbs, Order::Lsf)
 }
 
-fn unpack(value: &Integer, slot: usize) -> Vec<Integer> {
+/// The integers of [`pack`].
+pub(super) fn unpack(value: &Integer, slot: usize) -> Vec<Integer> {
     value.to_digits::<u64>(Order::Lsf).chunks(slot).map(|part| Integer::from_digits(part, Order::Lsf)).collect()
 }
