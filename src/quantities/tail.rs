@@ -235,7 +235,7 @@ impl TailRequest {
             value: decimal::guaranteed_decimal(&interval, self.digits),
             digits: interval.relative_digits(self.digits),
             status: if certified { Status::Certified } else { Status::FewerDigits },
-            notes: self.notes(&routes, certified),
+            notes: self.notes(&routes, &interval, certified),
             interval,
             routes,
             seconds: start.elapsed().as_secs_f64(),
@@ -243,9 +243,11 @@ impl TailRequest {
     }
 
     /// What a reader should know beside the numbers.
-    fn notes(&self, routes: &[RouteReport], certified: bool) -> Vec<String> {
+    fn notes(&self, routes: &[RouteReport], interval: &Interval, certified: bool) -> Vec<String> {
         let note = if routes.is_empty() {
             "at time zero the packet lies inside its box: the probability is exactly zero"
+        } else if routes.iter().all(|route| route.interval.is_none()) && *interval.upper() < 1e-9 {
+            "no route has bounds: shown is the bound exp(-2E)/(16 m a), E^2 = m^2 ((R - a)^2 - t^2), rounded up"
         } else if routes.iter().all(|route| route.interval.is_none()) {
             "no route has bounds: all that is known is that a probability lies between 0 and 1"
         } else if !certified && routes.iter().all(|route| route.note.is_none()) {
@@ -345,9 +347,7 @@ pub(super) fn run_routes(
             Some(so_far) => so_far.intersection(interval).ok_or_else(|| disagreement(&reports))?,
         });
     }
-    // With no route at all, a probability still lies between zero and one.
-    let unknown = || Interval::new(Float::new(64), Float::with_val(64, 1));
-    Ok((meeting.unwrap_or_else(unknown), reports))
+    Ok((meeting.unwrap_or_else(|| without_routes(problem)), reports))
 }
 
 /// Why a route does not run.
@@ -358,6 +358,21 @@ const BELOW_ARITHMETIC: &str = "the probability is below 1e-300000000, outside t
 fn below_arithmetic(problem: &TailProblem) -> bool {
     let (t, d) = (&problem.time, &problem.distance);
     !problem.massless && (d + Rational::from(t * 2)) * d > Rational::from(370_000_000u64).square()
+}
+
+/// What is known without a route: a probability lies between zero and one, and further
+/// `P <= exp(-2E)/(16 a)` (unit mass). In the double integral of the spectral route each factor `w`
+/// is at most `exp(-E)/4`, and `Int Int_0^inf dx dy/(cosh x + cosh y) = pi^2/4`, so
+/// `P = 4/(pi^2 a) S <= 4/(pi^2 a) exp(-2E) pi^2/64`. If `E >= 3.7e8`, `exp(-2E) < 1e-321000000`;
+/// the width `a` is above `1e-1000000` as the inputs have at most [`MAX_INPUT_BITS`] bits, so `P`
+/// is below `1e-300000000`.
+pub(super) fn without_routes(problem: &TailProblem) -> Interval {
+    let mut upper = Float::with_val(64, 1);
+    if below_arithmetic(problem) {
+        let power = rounding::down(64, Float::u_pow_u(10, 300_000_000));
+        upper = rounding::up(64, power.recip_ref());
+    }
+    Interval::new(Float::new(64), upper)
 }
 
 /// The moment at which the next one of several routes has to stop, so that each gets its share.

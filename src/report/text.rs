@@ -85,7 +85,7 @@ fn status(report: &TailReport) -> String {
     match report.status {
         Status::Certified if report.bounds.lower == report.bounds.upper => "certified: exact".to_owned(),
         Status::Certified => {
-            format!("certified: {} relative digits; the value is within one unit of its last digit", report.digits)
+            format!("certified: {} relative digits; value within one unit of its last digit", report.digits)
         }
         Status::FewerDigits => format!(
             "fewer digits than asked: {} of {}; the interval is proven all the same",
