@@ -7,6 +7,7 @@
 
 use super::meeting::meet;
 pub use super::meeting::{RouteReport, Status};
+use super::question::{Inputs, Question};
 use super::tail_range;
 use crate::arithmetic::{Bits, ExactInput, Interval, decimal, rounding};
 use crate::error::Error;
@@ -224,6 +225,53 @@ impl TailRequest {
     pub(super) fn effort(&self) -> Effort {
         let max_bits = Some(self.max_bits.unwrap_or(DEFAULT_MAX_BITS));
         Effort { max_bits, deadline: self.time_limit.and_then(|limit| Instant::now().checked_add(limit)) }
+    }
+}
+
+/// The region of the positions that count, in the names given for its edge.
+fn region(side: Side, at_cone: bool, edge: &str) -> String {
+    match side {
+        Side::Both => format!("|x| > {edge}"),
+        Side::Right => format!("x > {edge}"),
+        Side::Left if at_cone => format!("x < -({edge})"),
+        Side::Left => format!("x < -{edge}"),
+    }
+}
+
+impl Question for TailRequest {
+    fn inputs(&self) -> Inputs {
+        Inputs::of_packet(BoxPacket::NAME)
+            .with("half_width", self.packet.half_width().text())
+            .with("mass", self.mass.text())
+            .with("time", self.time.text())
+            .with("beyond", self.beyond.as_ref().map_or("cone", |region| region.text()))
+            .with("side", self.side.name())
+            .with("digits", self.digits.to_string())
+            .with("route", self.routes.name())
+            .with_optional("max_bits", self.max_bits.map(|bits| bits.to_string()))
+            .with_optional("time_limit", self.time_limit.map(|limit| limit.as_secs_f64().to_string()))
+    }
+
+    fn formula(&self) -> String {
+        let edge = if self.beyond.is_some() { "beyond" } else { "half_width + |time|" };
+        format!("P({})", region(self.side, self.beyond.is_none(), edge))
+    }
+
+    fn words(&self) -> String {
+        let (place, edge) = match self.beyond {
+            None => ("outside its light cone", "a + |t|"),
+            Some(_) => ("beyond a given distance outside its light cone", "R"),
+        };
+        let region = region(self.side, self.beyond.is_none(), edge);
+        format!("Probability of finding the particle {place}: {region}")
+    }
+
+    fn digits(&self) -> u32 {
+        self.digits
+    }
+
+    fn certify(&self) -> Result<TailResult, Error> {
+        TailRequest::certify(self)
     }
 }
 
