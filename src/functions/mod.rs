@@ -2,4 +2,5 @@
 
 pub mod bessel_k;
 pub mod complex_elementary;
+pub(crate) mod constants;
 pub mod elementary;

@@ -32,7 +32,7 @@
 //! Wide balls are evaluated at both ends.
 
 use super::argument::Argument;
-use super::{GUARD_BITS, Method, asymptotic, series, trapezoid};
+use super::{GUARD_BITS, Method, asymptotic, series, short_series, trapezoid};
 use crate::arithmetic::{Bits, Complex, Interval, Magnitude, Real};
 use crate::functions::elementary;
 use rug::Float;
@@ -79,6 +79,15 @@ fn nothing_known() -> (Real, Real) {
 /// `K_0(x)` and the other value wanted, scaled alike, at an exact argument.
 pub(super) fn exact_pair(x: &Argument, request: Request, second: SecondValue) -> (Real, Real) {
     let bits = request.bits;
+    if request.method.is_none()
+        && let Some(values) = short_series::values(x, bits)
+    {
+        let (k0, quotient) = rescale(values, x, bits, request.scaling == Scaling::Scaled, 1);
+        return match second {
+            SecondValue::OrderOne => (k0, quotient.mul(&x.ball(bits + GUARD_BITS), bits + 8)),
+            SecondValue::QuotientByArgument => (k0, quotient),
+        };
+    }
     match request.method.unwrap_or_else(|| Method::for_size(x.estimate(), bits)) {
         Method::Series => {
             let values = series::values(x, bits);
