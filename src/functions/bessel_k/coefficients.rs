@@ -43,7 +43,8 @@ impl Sequence {
     #[inline(always)]
     pub(super) fn scaled<const N: usize>(&self, k: usize, shift: i64) -> Limbs<N> {
         // mantissa 2^(e - 64 WORDS + 1) 2^shift in units of 2^-f: what is left of the mantissa.
-        let dropped = 64 * WORDS as i64 - 1 - i64::from(self.exponents[k]) - shift - i64::from(Limbs::<N>::FRACTION_BITS);
+        let dropped =
+            64 * WORDS as i64 - 1 - i64::from(self.exponents[k]) - shift - i64::from(Limbs::<N>::FRACTION_BITS);
         let first = (dropped / 64) as usize;
         let bits = (dropped % 64) as u32;
         let mut words = [0; N];
@@ -276,7 +277,8 @@ mod tests {
             }
             let square = Rational::from((1, factorial.clone().square()));
             for shift in [-700, -3, 0, 41] {
-                let power = if shift < 0 { Rational::from(1) >> -shift as u32 } else { Rational::from(1) << shift as u32 };
+                let power =
+                    if shift < 0 { Rational::from(1) >> -shift as u32 } else { Rational::from(1) << shift as u32 };
                 let scaled = Rational::from(&square * &power);
                 assert!(is_just_below(&OF_I0.scaled(k, shift), &scaled), "{k}");
                 assert!(is_just_below(&OF_K0.scaled(k, shift), &Rational::from(&scaled * &harmonic)), "{k}");
@@ -291,7 +293,8 @@ mod tests {
     fn exponentials() {
         let mut factorial = Integer::from(1);
         for i in 0..64 {
-            let exp = |divisor: u64| Float::with_val(900, Rational::from((i as u64, divisor))).exp().to_rational().unwrap();
+            let exp =
+                |divisor: u64| Float::with_val(900, Rational::from((i as u64, divisor))).exp().to_rational().unwrap();
             if let Some(entry) = exp_coarse(i) {
                 assert!(is_just_below(&entry, &exp(64)));
             }

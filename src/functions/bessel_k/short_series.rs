@@ -16,8 +16,9 @@
 //!
 //! Numbers are [`Limbs<N>`] with unit `2^-f`. All of them fit: for `j <= 8` the sums and the
 //! intermediate values of Horner's rule are at most those at `u = 1`, where the largest,
-//! `S <= H_n I_0(2^{j/2 + 1}) <= 6 e^32 < 2^49`. `G` is below `2^33` in absolute value for
-//! `|j| <= 2^30`, and where it is above four `P` is below two.
+//! `S <= H_n I_0(2^{j/2 + 1}) <= 6 e^32 < 2^49`. `|G|` is below 9 for `|j| <= 8`, and below `2^20`
+//! for smaller `j >= -2^20`, where `P` and `A` are below two. `2 w A K_0 = x I_1 K_0 < 1/2`, so that
+//! `2 A K_0` is below two for `w >= 1/4` and below `2^22` for smaller `w`.
 //!
 //! # Errors, in units
 //!
@@ -35,8 +36,9 @@
 //!
 //! *Terms left out.* `n` is such that `(n + 1)^2 >= 2^{j+2} >= 4 w` and `t_n <= 1` unit, proven with
 //! magnitudes. As in [`super::series`] the rests of `P` and `A` are at most `t_n/3`, and that of `2 K_0` is at
-//! most `2 t_n (L/3 + 4/9)` with `L <= H_n + |G|/2 <= 6 + |G|/2` (as `n < 144`), in all at most `|G| + 5` units.
-//! As `e` counts one unit for each coefficient and none was needed at `k = n` for a product, it covers the thirds of a unit.
+//! most `2 t_n (|L|/3 + 4/9)` with `|L| <= H_n + |G|/2 <= 6 + |G|/2` (as `n < 144`), in all at most
+//! `|G| + 5` units. There are `n + 1` coefficients but only `n` products, so that `e` covers the
+//! thirds of a unit.
 //!
 //! *`K_0`.* `2 K_0` is off by at most `E = 2 e + |G| e + P e_G + 1 + (|G| + 5)`, `e_G` the error
 //! of `G`. Computed numbers stand for `P`, `|G|`: their whole parts, plus one, are upper bounds as
