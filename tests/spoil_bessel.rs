@@ -1,6 +1,7 @@
 //! Shows that the containment checks of the K functions can fail: with `--features spoil` the power
 //! series are cut too early without their tail bound, and the checks must notice it.
 #![cfg(feature = "spoil")]
+#![allow(clippy::unwrap_used, reason = "a test stops at the first surprise")]
 
 use coneproof::arithmetic::{Bits, Complex, Real};
 use coneproof::functions::bessel_k::{self, Method};

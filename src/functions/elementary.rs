@@ -14,8 +14,8 @@
 //! | `sqrt` | `r / sqrt(m)` | `abs(sqrt x - sqrt m) = abs(x - m)/(sqrt x + sqrt m)` |
 //!
 //! Wide arguments of the increasing functions are evaluated at both ends with directed rounding
-//! instead ([`increasing`]). `sinh`, `cosh`, `acosh` always use their ends and monotonicity.
-//! Constants come from [`super::constants`] or, if more bits are wanted, from MPFR.
+//! instead (the macro `increasing`). `sinh`, `cosh`, `acosh` always use their ends and monotonicity.
+//! Constants come from stored words (`constants`) or, if more bits are wanted, from MPFR.
 
 use super::constants::{self, Leading};
 use crate::arithmetic::{Bits, Interval, Magnitude, Real, rounding};

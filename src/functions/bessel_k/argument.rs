@@ -224,7 +224,7 @@ mod tests {
         let scale = i64::from(Limbs::<N>::FRACTION_BITS) - found.exponent - 2;
         let scaled = (square.clone() << scale.max(0) as u32) >> (-scale).max(0) as u32;
         let short = scaled - found.fraction.to_integer();
-        assert!(short >= 0 && short < 1 && found.is_exact == (short == 0), "{square} {short}");
+        assert!((0..1).contains(&short) && found.is_exact == (short == 0), "{square} {short}");
     }
 
     proptest::proptest! {

@@ -1,9 +1,9 @@
 //! Tables for [`super::short_series`], computed by the compiler.
 //!
-//! Power series coefficients are normalised: a mantissa of [`WORDS`] words with its highest bit
+//! Power series coefficients are normalised: a mantissa of `WORDS` words with its highest bit
 //! set and a binary exponent. Exponential factors and inverse factorials are in fixed point with
 //! one word before the point. All are made by a few hundred operations that each round down in the
-//! last place of [`WORDS`] words, so that they are below the exact numbers by a relative
+//! last place of `WORDS` words, so that they are below the exact numbers by a relative
 //! `2^(12 - 64 (WORDS - 1))` at most: used with no more than `WORDS - 1` words, entries below
 //! `2^48` are short by less than `2^-4` units of the last place, on top of the truncation itself.
 //!
@@ -264,7 +264,7 @@ mod tests {
     fn is_just_below(entry: &Limbs<9>, exact: &Rational) -> bool {
         let units = exact.clone() << Limbs::<9>::FRACTION_BITS;
         let short = units - entry.to_integer();
-        short >= 0 && short < 2
+        (0..2).contains(&short)
     }
 
     #[test]

@@ -43,7 +43,7 @@
 //! *The change* divides by `2^g >= e^{|z|} >= S` and adds `sqrt 2`.
 //!
 //! *From `M` on* `|w|/k^2 <= 1` and `3 |T| 2^-f <= 1` (at first as `|t_k| <= S <= 2^g`, later by
-//! [`ComplexFactor::shorten`]), so `e_k <= 4k + 2`, and by summation the
+//! `ComplexFactor::shorten`), so `e_k <= 4k + 2`, and by summation the
 //! errors are at most
 //!
 //! ```text

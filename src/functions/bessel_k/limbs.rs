@@ -1,10 +1,10 @@
 //! Fixed-point numbers of a few machine words.
 //!
-//! [`Limbs<N>`] is `N` words, least significant first: the last is the whole part, the others are
+//! `Limbs<N>` is `N` words, least significant first: the last is the whole part, the others are
 //! the fraction, so that the unit in the last place is `2^-f` with `f = 64 (N - 1)`. Sums,
 //! differences and negation are exact modulo `2^64`; products and quotients of non-negative numbers are
 //! rounded down. Who calls makes sure that results fit: numbers are below `2^64`, or below `2^63`
-//! in absolute value where they are read as two's complement ([`Limbs::is_negative`]).
+//! in absolute value where they are read as two's complement (`Limbs::is_negative`).
 //!
 //! At up to some 500 bits these loops, of known length and without memory to allocate, take a
 //! fraction of the time of general integers.
@@ -49,9 +49,9 @@ impl<const N: usize> Limbs<N> {
     pub(super) fn plus(&self, other: &Limbs<N>) -> Limbs<N> {
         let mut sum = [0; N];
         let mut carry = 0;
-        for i in 0..N {
-            let wide = u128::from(self.0[i]) + u128::from(other.0[i]) + u128::from(carry);
-            sum[i] = wide as u64;
+        for ((word, &left), &right) in sum.iter_mut().zip(&self.0).zip(&other.0) {
+            let wide = u128::from(left) + u128::from(right) + u128::from(carry);
+            *word = wide as u64;
             carry = (wide >> 64) as u64;
         }
         Limbs(sum)
@@ -62,10 +62,10 @@ impl<const N: usize> Limbs<N> {
     pub(super) fn minus(&self, other: &Limbs<N>) -> Limbs<N> {
         let mut difference = [0; N];
         let mut borrow = false;
-        for i in 0..N {
-            let (partial, first) = self.0[i].overflowing_sub(other.0[i]);
-            let (word, second) = partial.overflowing_sub(u64::from(borrow));
-            difference[i] = word;
+        for ((word, &left), &right) in difference.iter_mut().zip(&self.0).zip(&other.0) {
+            let (partial, first) = left.overflowing_sub(right);
+            let (rest, second) = partial.overflowing_sub(u64::from(borrow));
+            *word = rest;
             borrow = first | second;
         }
         Limbs(difference)

@@ -22,16 +22,16 @@
 
 pub mod argument;
 pub mod asymptotic;
-mod coefficients;
+pub mod coefficients;
 pub mod complex;
 pub mod complex_asymptotic;
 pub mod complex_fixed;
 pub mod complex_series;
 pub mod factor;
-mod limbs;
+pub mod limbs;
 pub mod positive;
 pub mod series;
-mod short_logarithm;
+pub mod short_logarithm;
 pub mod short_series;
 pub mod trapezoid;
 

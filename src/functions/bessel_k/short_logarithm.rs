@@ -140,7 +140,7 @@ mod tests {
         fn multiples(factor in 0u64..1 << 60) {
             let exact = (Float::with_val(900, rug::float::Constant::Log2) * factor).to_rational().unwrap();
             let short = (exact << Limbs::<5>::FRACTION_BITS) - multiple_of_ln_2::<5>(factor).to_integer();
-            proptest::prop_assert!(short >= 0 && short < 2);
+            proptest::prop_assert!((0..2).contains(&short));
         }
     }
 

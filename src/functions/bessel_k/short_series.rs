@@ -14,7 +14,7 @@
 //! shifted table entries ([`super::coefficients`]), the sums are evaluated by Horner's rule from
 //! `k = n` down, side by side, and `ln(1/u)` comes from [`super::short_logarithm`].
 //!
-//! Numbers are [`Limbs<N>`] with unit `2^-f`. All of them fit: for `j <= 8` the sums and the
+//! Numbers are `Limbs<N>` with unit `2^-f`. All of them fit: for `j <= 8` the sums and the
 //! intermediate values of Horner's rule are at most those at `u = 1`, where the largest,
 //! `S <= H_n I_0(2^{j/2 + 1}) <= 6 e^32 < 2^49`. `|G|` is below 9 for `|j| <= 8`, and below `2^20`
 //! for smaller `j >= -2^20`, where `P` and `A` are below two. `2 w A K_0 = x I_1 K_0 < 1/2`, so that
