@@ -229,7 +229,9 @@ mod tests {
 
     proptest::proptest! {
         #[test]
-        fn quarter_squares(p in 1u128.., q in 1u128.., cut in 0u32..128, up in 0u32..300, down in 0u32..300, odd in 0u32..128) {
+        fn quarter_squares(
+            p in 1u128.., q in 1u128.., cut in 0u32..128, up in 0u32..300, down in 0u32..300, odd in 0u32..128
+        ) {
             let (p, q) = ((p >> cut).max(1), (q >> odd).max(1));
             let square = (Rational::from((Integer::from(p), Integer::from(q))) << up) >> down;
             check::<3>(&Argument::RootOf(&square), &square);

@@ -12,10 +12,10 @@
 //! # Errors, in units of the last place
 //!
 //! * `e^h`: Horner's rule for the sum of `h^k/k!` up to `k = m`; each step adds less than three
-//!   units, and multiplies what was there by `h < 2^-12`: short by less than four, the terms left out included, as
-//!   `m` is the first index with `h^(m+1)/(m+1)! < 1` unit (each further term is below `2^-12` times the one before; a table
-//!   entry shifted by `12 (m+1)` bits that is zero proves this up to one unit, its own error being below two).
-//!   Counted as six.
+//!   units, and multiplies what was there by `h < 2^-12`. `m` is the first index for which the
+//!   table's `1/(m+1)!` shifted by `12 (m+1)` bits is zero, so that `h^(m+1)/(m+1)!` is below one
+//!   unit but for the error of the table; each further term is below `2^-12` times the one before.
+//!   In all below five units; counted as six.
 //! * `e^(i/64) <= e^(45/64) < 2.03` and `e^(i'/4096) < 1.02`, short by two each: the product by at most
 //!   `2 2.03 + 2 1.02 + 1 < 8`; times `e^h` by `8 1.001 + 6 2.1 + 1 < 22`; times `u` by `23`.
 //! * `ln(1 + d)` changes by no more than `24` for that.
