@@ -19,7 +19,7 @@ use super::limbs::Limbs;
 /// Words of a table entry; numbers of up to `WORDS - 1` words are served.
 pub(super) const WORDS: usize = 10;
 /// Number of coefficients.
-pub(super) const COUNT: usize = 144;
+pub(super) const COUNT: usize = 160;
 /// Mantissas are followed by words of zeros, so that any window of them can be read.
 const PADDED: usize = 2 * WORDS;
 

@@ -36,7 +36,7 @@
 //!
 //! *Terms left out.* `n` is such that `(n + 1)^2 >= 2^{j+2} >= 4 w` and `t_n <= 1` unit, proven with
 //! magnitudes. As in [`super::series`] the rests of `P` and `A` are at most `t_n/3`, and that of `2 K_0` is at
-//! most `2 t_n (|L|/3 + 4/9)` with `|L| <= H_n + |G|/2 <= 6 + |G|/2` (as `n < 144`), in all at most
+//! most `2 t_n (|L|/3 + 4/9)` with `|L| <= H_n + |G|/2 <= 6 + |G|/2` (as `n < 160`), in all at most
 //! `|G| + 5` units. There are `n + 1` coefficients but only `n` products, so that `e` covers the
 //! thirds of a unit.
 //!
