@@ -116,6 +116,8 @@ pub struct TailResult {
     pub routes: Vec<RouteReport>,
     /// Remarks for the reader, such as what limits the digits.
     pub notes: Vec<String>,
+    /// Where the value is taken, for an extremum or a crossing.
+    pub at: Option<Interval>,
     /// Total time taken.
     pub seconds: f64,
 }
@@ -238,6 +240,7 @@ impl TailResult {
             notes,
             interval,
             routes,
+            at: None,
             seconds: start.elapsed().as_secs_f64(),
         }
     }

@@ -85,7 +85,7 @@ enum SideName {
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, ValueEnum)]
-enum FormatName {
+pub(super) enum FormatName {
     Text,
     Json,
 }
@@ -97,6 +97,28 @@ impl SideName {
             SideName::Right => Side::Right,
             SideName::Both => Side::Both,
         }
+    }
+}
+
+impl FormatName {
+    /// The answer in this form; `trouble` is what went wrong after it was found.
+    pub(super) fn answer(
+        self,
+        question: &dyn Question,
+        result: &TailResult,
+        trouble: Option<Error>,
+    ) -> Result<Answer, Error> {
+        let mut report = TailReport::new(question, result);
+        report.notes.extend(trouble.as_ref().map(|error| format!("no certificate was written: {error}")));
+        let text = match self {
+            FormatName::Text => text::result(&report),
+            FormatName::Json => json::result(&report)?,
+        };
+        let exit_code = match result.status {
+            Status::Certified => EXIT_CERTIFIED,
+            Status::FewerDigits => EXIT_FEWER_DIGITS,
+        };
+        Ok(Answer { text, exit_code, trouble })
     }
 }
 
@@ -154,17 +176,7 @@ impl TailArguments {
         let result = request.certify()?;
         // A computation may have taken hours: it is printed even if its certificate fails.
         let trouble = self.write_certificate(request, &result).err();
-        let mut report = TailReport::new(request, &result);
-        report.notes.extend(trouble.as_ref().map(|error| format!("no certificate was written: {error}")));
-        let text = match self.format {
-            FormatName::Text => text::result(&report),
-            FormatName::Json => json::result(&report)?,
-        };
-        let exit_code = match result.status {
-            Status::Certified => EXIT_CERTIFIED,
-            Status::FewerDigits => EXIT_FEWER_DIGITS,
-        };
-        Ok(Answer { text, exit_code, trouble })
+        self.format.answer(request, &result, trouble)
     }
 
     fn write_certificate(&self, request: &dyn Question, result: &TailResult) -> Result<(), Error> {
