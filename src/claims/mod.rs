@@ -1,3 +1,4 @@
 //! Claims: what a printed sentence allows, and whether the certified number agrees.
 
+pub mod file;
 pub mod statement;
