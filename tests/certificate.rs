@@ -74,7 +74,7 @@ fn content_changes_the_hash_and_layout_does_not() {
     for change in [
         |c: &mut Certificate| c.lower.push('1'),
         |c: &mut Certificate| c.digits += 1,
-        |c: &mut Certificate| c.inputs.mass = "2".to_owned(),
+        |c: &mut Certificate| c.inputs.set("mass", "2"),
         |c: &mut Certificate| c.routes[0].witness[0].value.push('1'),
         |c: &mut Certificate| c.routes.swap(0, 1),
         |c: &mut Certificate| c.value = None,

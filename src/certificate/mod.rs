@@ -26,8 +26,9 @@ pub use file::check_writable;
 
 use crate::arithmetic::decimal;
 use crate::error::Error;
-use crate::quantities::tail::{RouteReport, TailRequest, TailResult};
-use crate::report::{CAUTION, DecimalBounds, Inputs, PROGRAM, TailReport, VERSION};
+use crate::quantities::question::{Inputs, Question};
+use crate::quantities::tail::{RouteReport, TailResult};
+use crate::report::{CAUTION, DecimalBounds, PROGRAM, TailReport, VERSION};
 use serde::{Deserialize, Serialize};
 use serde_json::Value;
 use sha2::{Digest, Sha256};
@@ -123,8 +124,8 @@ impl Certificate {
     ///
     /// # Errors
     /// [`Error::Internal`] if the content cannot be written as JSON, which its types exclude.
-    pub fn new(request: &TailRequest, result: &TailResult) -> Result<Certificate, Error> {
-        let report = TailReport::new(request, result);
+    pub fn new(question: &dyn Question, result: &TailResult) -> Result<Certificate, Error> {
+        let report = TailReport::new(question, result);
         let mut certificate = Certificate {
             format: FORMAT.to_owned(),
             format_version: FORMAT_VERSION,
@@ -137,7 +138,7 @@ impl Certificate {
             value: report.value.map(|value: decimal::GuaranteedDecimal| value.text),
             digits: report.digits,
             status: report.status.name().to_owned(),
-            routes: result.routes.iter().map(|route| RouteCertificate::new(route, request.digits)).collect(),
+            routes: result.routes.iter().map(|route| RouteCertificate::new(route, question.digits())).collect(),
             notes: report.notes,
             caution: CAUTION.to_owned(),
             sha256: String::new(),

@@ -1,6 +1,12 @@
 //! The quantities that can be asked for.
 //!
+//! * [`question`]: what all questions have in common.
 //! * [`tail`]: the probability of finding a packet beyond a distance outside its light cone.
+//! * [`meeting`]: how the intervals of unrelated routes become one answer.
+//! * [`peak`]: the largest tail over all times.
 
+pub mod meeting;
+pub mod peak;
+pub mod question;
 pub mod tail;
 mod tail_range;

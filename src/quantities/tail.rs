@@ -5,11 +5,14 @@
 //! intersection is the answer. Requests with interval inputs are reduced to exact ones by the
 //! monotonicity lemmas in [`super::tail_range`].
 
+use super::meeting::meet;
+pub use super::meeting::{RouteReport, Status};
+use super::question::{Inputs, Question};
 use super::tail_range;
 use crate::arithmetic::{Bits, ExactInput, Interval, decimal, rounding};
 use crate::error::Error;
 use crate::packets::BoxPacket;
-use crate::routes::{Effort, Route, RouteFailure, RouteOutcome, TailProblem, kernel, spectral};
+use crate::routes::{Bound, Effort, Evaluation, Route, TailProblem, kernel, spectral};
 use rug::{Float, Rational};
 use std::time::{Duration, Instant};
 
@@ -96,46 +99,6 @@ pub struct TailRequest {
     pub max_bits: Option<Bits>,
     /// Longest time to spend.
     pub time_limit: Option<Duration>,
-}
-
-/// Whether the digits asked were reached.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum Status {
-    /// `(upper - lower) <= 10^-digits * lower` is proven.
-    Certified,
-    /// The interval is proven, but wider than asked.
-    FewerDigits,
-}
-
-impl Status {
-    /// The name in reports and certificates.
-    pub fn name(self) -> &'static str {
-        match self {
-            Status::Certified => "certified",
-            Status::FewerDigits => "fewer digits",
-        }
-    }
-}
-
-/// What one route contributed.
-#[derive(Clone, Debug)]
-pub struct RouteReport {
-    /// Name of the route.
-    pub name: &'static str,
-    /// One sentence on the method.
-    pub method: &'static str,
-    /// Its own enclosure, if it has one.
-    pub interval: Option<Interval>,
-    /// Working precision in bits.
-    pub bits: Bits,
-    /// Number of nodes.
-    pub nodes: usize,
-    /// Time taken.
-    pub seconds: f64,
-    /// Why it has no enclosure, or fewer digits than asked.
-    pub note: Option<String>,
-    /// Named numbers that fix the computation.
-    pub witness: Vec<(String, String)>,
 }
 
 /// A certified tail probability.
@@ -265,6 +228,53 @@ impl TailRequest {
     }
 }
 
+/// The region of the positions that count, in the names given for its edge.
+fn region(side: Side, at_cone: bool, edge: &str) -> String {
+    match side {
+        Side::Both => format!("|x| > {edge}"),
+        Side::Right => format!("x > {edge}"),
+        Side::Left if at_cone => format!("x < -({edge})"),
+        Side::Left => format!("x < -{edge}"),
+    }
+}
+
+impl Question for TailRequest {
+    fn inputs(&self) -> Inputs {
+        Inputs::of_packet(BoxPacket::NAME)
+            .with("half_width", self.packet.half_width().text())
+            .with("mass", self.mass.text())
+            .with("time", self.time.text())
+            .with("beyond", self.beyond.as_ref().map_or("cone", |region| region.text()))
+            .with("side", self.side.name())
+            .with("digits", self.digits.to_string())
+            .with("route", self.routes.name())
+            .with_optional("max_bits", self.max_bits.map(|bits| bits.to_string()))
+            .with_optional("time_limit", self.time_limit.map(|limit| limit.as_secs_f64().to_string()))
+    }
+
+    fn formula(&self) -> String {
+        let edge = if self.beyond.is_some() { "beyond" } else { "half_width + |time|" };
+        format!("P({})", region(self.side, self.beyond.is_none(), edge))
+    }
+
+    fn words(&self) -> String {
+        let (place, edge) = match self.beyond {
+            None => ("outside its light cone", "a + |t|"),
+            Some(_) => ("beyond a given distance outside its light cone", "R"),
+        };
+        let region = region(self.side, self.beyond.is_none(), edge);
+        format!("Probability of finding the particle {place}: {region}")
+    }
+
+    fn digits(&self) -> u32 {
+        self.digits
+    }
+
+    fn certify(&self) -> Result<TailResult, Error> {
+        TailRequest::certify(self)
+    }
+}
+
 /// Exact arithmetic on numbers of a million digits would take minutes.
 fn check_size(field: &str, input: &ExactInput) -> Result<(), Error> {
     let small = |end: &Rational| end.numer().significant_bits().max(end.denom().significant_bits()) <= MAX_INPUT_BITS;
@@ -332,21 +342,13 @@ pub(super) fn run_routes(
         RouteChoice::Spectral => vec![&spectral::SPECTRAL],
         RouteChoice::Both => vec![&kernel::KERNEL, &spectral::SPECTRAL],
     };
-    let mut reports = Vec::with_capacity(chosen.len());
-    for (index, route) in chosen.iter().enumerate() {
-        let share = effort.deadline.map(|deadline| share_of_time(deadline, chosen.len() - index));
-        reports.push(match below_arithmetic(problem) {
-            true => report(*route, None, Some(BELOW_ARITHMETIC.to_owned()), Duration::ZERO),
-            false => drive(*route, problem, digits, &Effort { deadline: share, ..*effort }),
-        });
+    if below_arithmetic(problem) {
+        let reports = chosen.iter().map(|route| RouteReport::idle(route.name(), route.method(), BELOW_ARITHMETIC));
+        return Ok((without_routes(problem), reports.collect()));
     }
-    let mut meeting: Option<Interval> = None;
-    for interval in reports.iter().filter_map(|report| report.interval.as_ref()) {
-        meeting = Some(match meeting {
-            None => interval.clone(),
-            Some(so_far) => so_far.intersection(interval).ok_or_else(|| disagreement(&reports))?,
-        });
-    }
+    let bound: Vec<Bound> = chosen.into_iter().map(|route| Bound { route, problem }).collect();
+    let evaluations: Vec<&dyn Evaluation> = bound.iter().map(|bound| bound as &dyn Evaluation).collect();
+    let (meeting, reports) = meet(&evaluations, digits, effort)?;
     Ok((meeting.unwrap_or_else(|| without_routes(problem)), reports))
 }
 
@@ -373,88 +375,4 @@ pub(super) fn without_routes(problem: &TailProblem) -> Interval {
         upper = rounding::up(64, power.recip_ref());
     }
     Interval::new(Float::new(64), upper)
-}
-
-/// The moment at which the next one of several routes has to stop, so that each gets its share.
-fn share_of_time(deadline: Instant, routes: usize) -> Instant {
-    let left = deadline.saturating_duration_since(Instant::now());
-    let share = u32::try_from(routes).map_or(left, |routes| left / routes.max(1));
-    deadline.checked_sub(left - share).unwrap_or(deadline)
-}
-
-fn disagreement(reports: &[RouteReport]) -> Error {
-    let shown = |report: &RouteReport| {
-        report.interval.as_ref().map(|interval| {
-            let lower = decimal::lower_decimal(interval.lower(), 30);
-            (report.name.to_owned(), lower, decimal::upper_decimal(interval.upper(), 30))
-        })
-    };
-    Error::RoutesDisagree { intervals: reports.iter().filter_map(shown).collect() }
-}
-
-/// Raises the goal of one route until its interval has the digits asked or the effort ends.
-fn drive(route: &dyn Route, problem: &TailProblem, digits: u32, effort: &Effort) -> RouteReport {
-    const ATTEMPTS: usize = 5;
-    let start = Instant::now();
-    let mut best: Option<RouteOutcome> = None;
-    let mut note = None;
-    // Under a time limit, a quick first answer makes sure that there is an honest interval.
-    let quick = effort.deadline.is_some() && digits > 30;
-    let mut goal = if quick { 15 } else { digits };
-    for _ in 0..ATTEMPTS {
-        match evaluate_within(route, problem, goal, effort) {
-            Ok((outcome, cut)) => {
-                let reached = outcome.interval.relative_digits(digits);
-                let improves = best.as_ref().is_none_or(|b| b.interval.relative_digits(digits) < reached);
-                if improves || best.is_none() {
-                    best = Some(outcome);
-                }
-                if reached >= digits || cut {
-                    note = (reached < digits).then(|| "the limit on bits was reached".to_owned());
-                    break;
-                }
-                note = Some("the interval did not become narrow enough".to_owned());
-                goal = if goal < digits { digits } else { goal + (digits - reached) + 3 };
-            }
-            Err(failure) => {
-                note = Some(failure.to_string());
-                break;
-            }
-        }
-    }
-    let reached = best.as_ref().is_some_and(|b| b.interval.has_relative_digits(digits));
-    report(route, best, if reached { None } else { note }, start.elapsed())
-}
-
-/// One evaluation; when bits are short, the largest goal that the limit allows (flagged `true`).
-fn evaluate_within(
-    route: &dyn Route,
-    problem: &TailProblem,
-    goal: u32,
-    effort: &Effort,
-) -> Result<(RouteOutcome, bool), RouteFailure> {
-    let mut goal = goal;
-    let mut cut = false;
-    loop {
-        match route.evaluate(problem, goal, effort) {
-            Err(RouteFailure::BitLimit { needed }) if goal > 1 => {
-                // Bits grow by at most needed / goal for each digit, so this never gives up too much.
-                let excess = needed.saturating_sub(effort.max_bits.unwrap_or(needed));
-                let digits = u64::from(excess) * u64::from(goal) / u64::from(needed.max(1));
-                goal = goal.saturating_sub(u32::try_from(digits).unwrap_or(goal).max(1)).max(1);
-                cut = true;
-            }
-            Err(failure) => return Err(failure),
-            Ok(outcome) => return Ok((outcome, cut)),
-        }
-    }
-}
-
-fn report(route: &dyn Route, best: Option<RouteOutcome>, note: Option<String>, elapsed: Duration) -> RouteReport {
-    let (interval, bits, nodes, witness) = match best {
-        Some(outcome) => (Some(outcome.interval), outcome.bits, outcome.nodes, outcome.witness),
-        None => (None, 0, 0, Vec::new()),
-    };
-    let seconds = elapsed.as_secs_f64();
-    RouteReport { name: route.name(), method: route.method(), interval, bits, nodes, seconds, note, witness }
 }

@@ -5,8 +5,9 @@
 //! `schemas/tail-result.schema.json`), `not certified` ([`scout`]; `tail-estimate.schema.json`) and
 //! `error` ([`error`]; `error.schema.json`).
 
-use super::{CAUTION, Inputs, PROGRAM, RouteLine, TailReport, VERSION};
+use super::{CAUTION, PROGRAM, RouteLine, TailReport, VERSION};
 use crate::error::Error;
+use crate::quantities::question::Inputs;
 use crate::scout::Scout;
 use serde::Serialize;
 

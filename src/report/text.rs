@@ -5,7 +5,8 @@
 //! more than [`CHUNK`] characters are shortened in the middle, with the number of characters left
 //! out; in full they are in the JSON report.
 
-use super::{CAUTION, DecimalBounds, Inputs, RouteLine, TailReport};
+use super::{CAUTION, DecimalBounds, RouteLine, TailReport};
+use crate::quantities::question::Inputs;
 use crate::quantities::tail::Status;
 use crate::scout::Scout;
 
@@ -54,19 +55,30 @@ pub fn scout(words: &str, inputs: &Inputs, scout: &Scout) -> String {
 fn heading(words: &str, inputs: &Inputs) -> String {
     let mut text = format!("{words}\n");
     text += "Free particle released at time 0, Newton-Wigner position, units with hbar = c = 1\n\n";
-    let listed = [
-        ("packet", &inputs.packet),
-        ("half-width a", &inputs.half_width),
-        ("mass m", &inputs.mass),
-        ("time t", &inputs.time),
-        ("beyond R", &inputs.beyond),
-        ("side", &inputs.side),
-    ];
-    for (name, read) in listed {
-        let explained = if read == "cone" { "cone (a + |t|)" } else { read };
-        text += &entry(name, &shortened(&one_line(explained)));
+    // How an answer is computed is said elsewhere.
+    const ELSEWHERE: [&str; 4] = ["digits", "route", "max_bits", "time_limit"];
+    for (name, read) in inputs.iter().filter(|(name, _)| !ELSEWHERE.contains(name)) {
+        let explained = match (name, read, inputs.get("half_width")) {
+            ("beyond", "cone", Some(_)) => "cone (a + |t|)",
+            _ => read,
+        };
+        text += &entry(&label(name), &shortened(&one_line(explained)));
     }
     text
+}
+
+/// The name of an input with its symbol.
+fn label(name: &str) -> String {
+    let symbol = match name {
+        "half_width" | "radius" => " a",
+        "mass" => " m",
+        "time" => " t",
+        "beyond" => " R",
+        "momentum" => " k",
+        _ => "",
+    };
+    let words = if name == "half_width" { "half-width".to_owned() } else { name.replace('_', " ") };
+    words + symbol
 }
 
 fn value(report: &TailReport) -> String {

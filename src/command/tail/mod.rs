@@ -7,8 +7,9 @@ mod box_packet;
 use super::{Answer, fields};
 use crate::certificate::{self, Certificate};
 use crate::error::{EXIT_CERTIFIED, EXIT_FEWER_DIGITS, Error};
+use crate::quantities::question::Question;
 use crate::quantities::tail::{RouteChoice, Side, Status, TailRequest, TailResult};
-use crate::report::{self, Inputs, TailReport, json, text};
+use crate::report::{TailReport, json, text};
 use crate::scout;
 use clap::{Args, Subcommand, ValueEnum};
 use std::path::PathBuf;
@@ -158,10 +159,10 @@ impl TailArguments {
 
     fn estimate(&self, request: &TailRequest) -> Result<Answer, Error> {
         let scout = scout::estimate(request)?;
-        let inputs = Inputs::from(request);
+        let inputs = request.inputs();
         Ok(Answer::plain(match self.format {
-            FormatName::Text => text::scout(&report::in_words(request), &inputs, &scout),
-            FormatName::Json => json::scout(&report::quantity(request), &inputs, &scout)?,
+            FormatName::Text => text::scout(&request.words(), &inputs, &scout),
+            FormatName::Json => json::scout(&request.formula(), &inputs, &scout)?,
         }))
     }
 }

@@ -67,6 +67,7 @@ mod massless;
 mod near_field;
 mod nodes;
 mod plan;
+pub mod time_derivatives;
 
 use super::{Effort, Route, RouteFailure, RouteOutcome, TailProblem};
 use crate::arithmetic::{Bits, Interval, Magnitude, Real, decimal};
