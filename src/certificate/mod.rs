@@ -75,6 +75,9 @@ pub struct Certificate {
     pub value: Option<String>,
     /// Relative digits reached: `upper - lower <= 10^-digits * lower`.
     pub digits: u32,
+    /// Where the value is taken, for an extremum or a crossing.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub at: Option<Bounds>,
     /// `certified` or `fewer digits`.
     pub status: String,
     /// What each route found.
@@ -109,6 +112,16 @@ pub struct RouteCertificate {
     pub witness: Vec<Witness>,
 }
 
+/// A pair of decimals that bound a number.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Bounds {
+    /// Decimal not above the number.
+    pub lower: String,
+    /// Decimal not below the number.
+    pub upper: String,
+}
+
 /// One named number of a computation.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
@@ -137,6 +150,7 @@ impl Certificate {
             upper: report.bounds.upper,
             value: report.value.map(|value: decimal::GuaranteedDecimal| value.text),
             digits: report.digits,
+            at: report.at.map(|at| Bounds { lower: at.lower, upper: at.upper }),
             status: report.status.name().to_owned(),
             routes: result.routes.iter().map(|route| RouteCertificate::new(route, question.digits())).collect(),
             notes: report.notes,

@@ -17,6 +17,7 @@ macro_rules! exit_codes {
 }
 
 mod fields;
+mod peak;
 mod schema;
 mod tail;
 mod usage;
@@ -41,6 +42,8 @@ struct CommandLine {
 enum Task {
     /// The probability of finding a packet outside its light cone
     Tail(tail::TailCommand),
+    /// The largest probability over all times, with a proof that none is larger
+    Peak(peak::PeakCommand),
     /// Print the JSON Schema of something that this program writes
     Schema(schema::SchemaCommand),
 }
@@ -50,6 +53,7 @@ const AFTER_HELP: &str = concat!(
 Examples:
   coneproof tail box --half-width 1 --mass 1 --time 1 --digits 30
   coneproof tail box --help
+  coneproof peak box --half-width 1/2 --over time
   coneproof schema certificate
 
 ",
@@ -105,6 +109,7 @@ impl Task {
     fn answer(&self) -> Result<Answer, Error> {
         match self {
             Task::Tail(tail) => tail.answer(),
+            Task::Peak(peak) => peak.answer(),
             Task::Schema(schema) => Ok(schema.answer()),
         }
     }

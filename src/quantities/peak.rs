@@ -20,7 +20,8 @@
 //!
 //! For mass zero there is no largest value: `P` rises with time towards 1/6.
 
-use super::tail::{RouteChoice, RouteReport, Status, run_routes};
+use super::question::{Inputs, Question};
+use super::tail::{RouteChoice, RouteReport, TailResult, run_routes};
 use crate::arithmetic::{ExactInput, Interval, Magnitude, Real, decimal, rounding};
 use crate::error::Error;
 use crate::functions::elementary::exp;
@@ -48,27 +49,6 @@ pub struct PeakRequest {
     pub digits: u32,
     /// Longest time to spend.
     pub time_limit: Option<Duration>,
-}
-
-/// A certified maximum.
-#[derive(Clone, Debug)]
-pub struct PeakResult {
-    /// Enclosure of the largest value.
-    pub interval: Interval,
-    /// Enclosure of the time at which it is reached.
-    pub at: Interval,
-    /// The value with guaranteed digits.
-    pub value: Option<decimal::GuaranteedDecimal>,
-    /// Relative digits of the value reached.
-    pub digits: u32,
-    /// Whether these are as many as asked.
-    pub status: Status,
-    /// What each route found for the value inside the bracket.
-    pub routes: Vec<RouteReport>,
-    /// Numbers that fix the proof.
-    pub witness: Vec<(String, String)>,
-    /// Time taken.
-    pub seconds: f64,
 }
 
 impl PeakRequest {
@@ -110,7 +90,7 @@ impl PeakRequest {
     /// # Errors
     /// [`Error::BadInput`] for a request that cannot be used or is out of reach, [`Error::RoutesDisagree`] or
     /// [`Error::Internal`] for a defect of this program.
-    pub fn certify(&self) -> Result<PeakResult, Error> {
+    pub fn certify(&self) -> Result<TailResult, Error> {
         self.validate()?;
         let start = Instant::now();
         let deadline = self.time_limit.and_then(|limit| start.checked_add(limit));
@@ -122,19 +102,19 @@ impl PeakRequest {
         let interval = found.value.intersection(&meeting.hull(&found.raised(&meeting))).ok_or_else(|| {
             Error::Internal { found: "the routes and the time derivatives exclude each other".to_owned() }
         })?;
-        let certified = interval.has_relative_digits(self.digits);
         let bits = 64 + 4 * self.digits;
         let scaled = |end: &Rational| Rational::from(end / self.mass.lower());
-        Ok(PeakResult {
-            at: Interval::new(rounding::down(bits, &scaled(&found.left)), rounding::up(bits, &scaled(&found.right))),
-            value: decimal::guaranteed_decimal(&interval, self.digits),
-            digits: interval.relative_digits(self.digits),
-            status: if certified { Status::Certified } else { Status::FewerDigits },
-            witness: found.witness(),
-            interval,
-            routes,
-            seconds: start.elapsed().as_secs_f64(),
-        })
+        let at = Interval::new(rounding::down(bits, &scaled(&found.left)), rounding::up(bits, &scaled(&found.right)));
+        let mut routes = routes;
+        if let Some(spectral) = routes.iter_mut().find(|route| route.name == "spectral") {
+            spectral.witness.extend(found.witness());
+        }
+        let notes = vec![
+            "the routes' intervals are for one time inside the bracket `at`; the answer is for the maximum".to_owned(),
+            "no other time has a larger value: Lemma P1 (late), P2 (early), P3 (between)".to_owned(),
+        ];
+        let result = TailResult::new(interval, self.digits, routes, notes, start);
+        Ok(TailResult { at: Some(at), ..result })
     }
 
     fn refused(&self, failure: &RouteFailure) -> Error {
@@ -144,6 +124,35 @@ impl PeakRequest {
             was,
             &format!("no proof was found ({failure}); more time or a larger mass * half-width may help"),
         )
+    }
+}
+
+impl Question for PeakRequest {
+    fn inputs(&self) -> Inputs {
+        Inputs::of_packet(BoxPacket::NAME)
+            .with("half_width", self.packet.half_width().text())
+            .with("mass", self.mass.text())
+            .with("over", "time")
+            .with("beyond", "cone")
+            .with("side", "both")
+            .with("digits", self.digits.to_string())
+            .with_optional("time_limit", self.time_limit.map(|limit| limit.as_secs_f64().to_string()))
+    }
+
+    fn formula(&self) -> String {
+        "max over time of P(|x| > half_width + |time|)".to_owned()
+    }
+
+    fn words(&self) -> String {
+        "Largest probability, over all times, of finding the particle outside its light cone".to_owned()
+    }
+
+    fn digits(&self) -> u32 {
+        self.digits
+    }
+
+    fn certify(&self) -> Result<TailResult, Error> {
+        PeakRequest::certify(self)
     }
 }
 
@@ -355,8 +364,9 @@ fn safe_step(slope: &Real, curve: &Real, third: Magnitude) -> Result<Rational, R
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::quantities::tail::Status;
 
-    fn peak(half_width: &str, digits: u32) -> PeakResult {
+    fn peak(half_width: &str, digits: u32) -> TailResult {
         let packet = BoxPacket::new(half_width.parse().unwrap()).unwrap();
         let mut request = PeakRequest::new(packet, "1".parse().unwrap()).unwrap();
         request.digits = digits;
@@ -378,11 +388,12 @@ mod tests {
         for half_width in ["1/100", "1/10", "1", "5"] {
             let found = peak(half_width, 15);
             assert_eq!(found.status, Status::Certified, "{found:?}");
-            for (interval, id) in [(&found.interval, "G_Pmax"), (&found.at, "G_tmax")] {
+            let at = found.at.as_ref().unwrap();
+            for (interval, id) in [(&found.interval, "G_Pmax"), (at, "G_tmax")] {
                 let (low, high) = known(&format!("{id}_{half_width}"));
                 assert!(*interval.lower() <= high && *interval.upper() >= low, "{half_width} {id} {interval:?}");
             }
-            assert!(found.at.upper().to_f64() - found.at.lower().to_f64() < 1e-8);
+            assert!(at.upper().to_f64() - at.lower().to_f64() < 1e-8);
         }
     }
 
@@ -392,6 +403,6 @@ mod tests {
         let heavy = PeakRequest::new(packet, "2".parse().unwrap()).unwrap().certify().unwrap();
         let light = peak("1", 15);
         assert!(heavy.interval.intersection(&light.interval).is_some());
-        assert!((heavy.at.lower().to_f64() * 2.0 - light.at.lower().to_f64()).abs() < 1e-8);
+        assert!((heavy.at.unwrap().lower().to_f64() * 2.0 - light.at.unwrap().lower().to_f64()).abs() < 1e-8);
     }
 }

@@ -116,6 +116,8 @@ pub struct TailResult {
     pub routes: Vec<RouteReport>,
     /// Remarks for the reader, such as what limits the digits.
     pub notes: Vec<String>,
+    /// Where the value is taken, for an extremum or a crossing.
+    pub at: Option<Interval>,
     /// Total time taken.
     pub seconds: f64,
 }
@@ -194,15 +196,8 @@ impl TailRequest {
             }
         }
         let certified = interval.has_relative_digits(self.digits);
-        Ok(TailResult {
-            value: decimal::guaranteed_decimal(&interval, self.digits),
-            digits: interval.relative_digits(self.digits),
-            status: if certified { Status::Certified } else { Status::FewerDigits },
-            notes: self.notes(&routes, &interval, certified),
-            interval,
-            routes,
-            seconds: start.elapsed().as_secs_f64(),
-        })
+        let notes = self.notes(&routes, &interval, certified);
+        Ok(TailResult::new(interval, self.digits, routes, notes, start))
     }
 
     /// What a reader should know beside the numbers.
@@ -228,8 +223,31 @@ impl TailRequest {
     }
 }
 
+impl TailResult {
+    /// The result with everything that follows from its interval.
+    pub(super) fn new(
+        interval: Interval,
+        digits: u32,
+        routes: Vec<RouteReport>,
+        notes: Vec<String>,
+        start: Instant,
+    ) -> TailResult {
+        let certified = interval.has_relative_digits(digits);
+        TailResult {
+            value: decimal::guaranteed_decimal(&interval, digits),
+            digits: interval.relative_digits(digits),
+            status: if certified { Status::Certified } else { Status::FewerDigits },
+            notes,
+            interval,
+            routes,
+            at: None,
+            seconds: start.elapsed().as_secs_f64(),
+        }
+    }
+}
+
 /// The region of the positions that count, in the names given for its edge.
-fn region(side: Side, at_cone: bool, edge: &str) -> String {
+pub(super) fn region(side: Side, at_cone: bool, edge: &str) -> String {
     match side {
         Side::Both => format!("|x| > {edge}"),
         Side::Right => format!("x > {edge}"),
@@ -276,7 +294,7 @@ impl Question for TailRequest {
 }
 
 /// Exact arithmetic on numbers of a million digits would take minutes.
-fn check_size(field: &str, input: &ExactInput) -> Result<(), Error> {
+pub(super) fn check_size(field: &str, input: &ExactInput) -> Result<(), Error> {
     let small = |end: &Rational| end.numer().significant_bits().max(end.denom().significant_bits()) <= MAX_INPUT_BITS;
     if small(input.lower()) && small(input.upper()) {
         return Ok(());
@@ -286,7 +304,7 @@ fn check_size(field: &str, input: &ExactInput) -> Result<(), Error> {
 }
 
 /// An exact number for a sentence: as a fraction if that is short, else rounded up.
-fn readable(value: &Rational) -> String {
+pub(super) fn readable(value: &Rational) -> String {
     if value.numer().significant_bits().max(value.denom().significant_bits()) <= 64 {
         return value.to_string();
     }
@@ -294,7 +312,7 @@ fn readable(value: &Rational) -> String {
 }
 
 /// The part of an enclosure that can be a probability.
-fn as_probability(interval: &Interval) -> Result<Interval, Error> {
+pub(super) fn as_probability(interval: &Interval) -> Result<Interval, Error> {
     let unit = Interval::new(Float::new(64), Float::with_val(64, 1));
     let found = || format!("the enclosure [{}, {}] of a probability", interval.lower(), interval.upper());
     interval.intersection(&unit).ok_or_else(|| Error::Internal { found: found() })

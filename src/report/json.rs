@@ -19,6 +19,8 @@ struct ResultObject<'a> {
     upper: &'a str,
     value: Option<&'a str>,
     digits: u32,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    at: Option<BoundsObject<'a>>,
     routes: Vec<RouteObject<'a>>,
     status: &'a str,
     notes: &'a [String],
@@ -26,6 +28,12 @@ struct ResultObject<'a> {
     seconds: f64,
     program: &'a str,
     version: &'a str,
+}
+
+#[derive(Serialize)]
+struct BoundsObject<'a> {
+    lower: &'a str,
+    upper: &'a str,
 }
 
 #[derive(Serialize)]
@@ -85,6 +93,7 @@ pub fn result(report: &TailReport) -> Result<String, Error> {
         upper: &report.bounds.upper,
         value: report.value.as_ref().map(|value| value.text.as_str()),
         digits: report.digits,
+        at: report.at.as_ref().map(|at| BoundsObject { lower: &at.lower, upper: &at.upper }),
         routes: report.routes.iter().map(route).collect(),
         status: report.status.name(),
         notes: &report.notes,

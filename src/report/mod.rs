@@ -104,6 +104,8 @@ pub struct TailReport {
     pub routes: Vec<RouteLine>,
     /// Remarks for the reader.
     pub notes: Vec<String>,
+    /// Where the value is taken, for an extremum or a crossing.
+    pub at: Option<DecimalBounds>,
     /// Total time taken.
     pub seconds: f64,
 }
@@ -123,6 +125,7 @@ impl TailReport {
             status: result.status,
             routes: result.routes.iter().map(|route| RouteLine::new(route, digits)).collect(),
             notes: result.notes.clone(),
+            at: result.at.as_ref().map(|at| DecimalBounds::new(at, digits)),
             seconds: result.seconds,
         }
     }

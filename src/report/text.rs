@@ -26,6 +26,9 @@ pub fn result(report: &TailReport) -> String {
     text.push('\n');
     text += &value(report);
     text += &numbers(&report.bounds);
+    if let Some(at) = &report.at {
+        text += &entry("at time", &format!("from {} to {}", shortened(&at.lower), shortened(&at.upper)));
+    }
     for route in &report.routes {
         text.push('\n');
         text += &route_lines(route);

@@ -1,6 +1,6 @@
 //! `coneproof tail box`.
 
-use super::{TailArguments, fields};
+use super::{Answer, TailArguments, fields};
 use crate::error::Error;
 use crate::packets::BoxPacket;
 use crate::quantities::tail::TailRequest;
@@ -13,7 +13,7 @@ pub(super) struct BoxArguments {
     #[arg(long, value_name = "A", allow_hyphen_values = true)]
     half_width: Option<String>,
     #[command(flatten)]
-    pub(super) common: TailArguments,
+    common: TailArguments,
 }
 
 const AFTER_HELP: &str = concat!(
@@ -37,8 +37,14 @@ them alone."
 );
 
 impl BoxArguments {
+    /// The answer.
+    pub(super) fn answer(&self) -> Result<Answer, Error> {
+        let request = self.request()?;
+        if self.common.scout { self.common.estimate(&request) } else { self.common.certify(&request) }
+    }
+
     /// The request, with every field checked.
-    pub(super) fn request(&self) -> Result<TailRequest, Error> {
+    fn request(&self) -> Result<TailRequest, Error> {
         let half_width = fields::required("half-width", self.half_width.as_deref(), "--half-width 1")?;
         let packet = BoxPacket::new(half_width)?;
         let mass = fields::exact("mass", &self.common.mass)?;
