@@ -100,6 +100,11 @@ fn documents_of_another_shape_are_refused() {
         shorter.as_object_mut().unwrap().remove(name);
         assert!(Certificate::from_json(&shorter.to_string()).is_err(), "without {name}");
     }
+    for name in ["note", "witness"] {
+        let mut shorter = value.clone();
+        shorter["routes"][0].as_object_mut().unwrap().remove(name);
+        assert!(Certificate::from_json(&shorter.to_string()).is_err(), "a route without {name}");
+    }
     // A forger who computes the hash anew is still held to the order of the bounds.
     let mut forged = certificate("1", "1", None);
     std::mem::swap(&mut forged.lower, &mut forged.upper);

@@ -197,14 +197,17 @@ impl Certificate {
         };
         let certificate: Certificate = serde_json::from_str(text).map_err(unreadable)?;
         // The document itself, since a member left out would be filled in above.
-        let document: Value = serde_json::from_str(text).map_err(unreadable)?;
+        let content = canonical(serde_json::from_str(text).map_err(unreadable)?)?;
+        if content != certificate.canonical_content()? {
+            return refuse("a document with a member too few", "every member must be there, even one that is null");
+        }
         if certificate.format != FORMAT {
             return refuse(&certificate.format, "the format must be coneproof-certificate");
         }
         if certificate.format_version != FORMAT_VERSION {
             return refuse(&certificate.format_version.to_string(), "the format_version must be 1");
         }
-        if hash(&canonical(document)?) != certificate.sha256 {
+        if hash(&content) != certificate.sha256 {
             return refuse(&certificate.sha256, "the hash must be that of the content, which has been changed");
         }
         certificate.check_order()?;
