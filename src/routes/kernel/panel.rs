@@ -40,7 +40,7 @@ use crate::routes::{Effort, RouteFailure};
 use rug::{Assign, Integer, Rational};
 
 /// `F` on a panel up to its constant.
-pub(super) struct PanelSeries {
+pub(in crate::routes) struct PanelSeries {
     /// `F_n` in units of `2^-scale`; the entry at zero is zero.
     coefficients: Vec<Integer>,
     /// Bound of the sum of all errors of the other coefficients, truncation included.
@@ -48,7 +48,7 @@ pub(super) struct PanelSeries {
 }
 
 /// `F` on a panel with its constant.
-pub(super) struct Anchored {
+pub(in crate::routes) struct Anchored {
     /// `F_n` in units of `2^-scale`.
     pub coefficients: Vec<Integer>,
     /// Bound of the error anywhere on the panel.
@@ -89,7 +89,7 @@ impl PanelSeries {
     }
 
     /// The series about `v = time + s`, `|v - time - s| <= half`.
-    pub(super) fn about(
+    pub(in crate::routes) fn about(
         time: &Rational,
         s: &Rational,
         half: &Rational,
@@ -118,7 +118,7 @@ impl PanelSeries {
     }
 
     /// Adds the constant that makes the value at the right end equal to `right`.
-    pub(super) fn anchored(&self, right: &Real, scale: u32) -> Result<Anchored, RouteFailure> {
+    pub(in crate::routes) fn anchored(&self, right: &Real, scale: u32) -> Result<Anchored, RouteFailure> {
         let (value, radius) = fixed(right, scale)?;
         let unit = Magnitude::power_of_two(-i64::from(scale));
         let mut coefficients = self.coefficients.clone();
@@ -144,7 +144,7 @@ fn full_size(time: &Rational, s: &Rational, half: &Rational) -> Magnitude {
     function_bound(time, &Rational::from(s - half))
 }
 
-pub(super) fn fixed(value: &Real, scale: u32) -> Result<(Integer, Magnitude), RouteFailure> {
+pub(in crate::routes) fn fixed(value: &Real, scale: u32) -> Result<(Integer, Magnitude), RouteFailure> {
     value.to_fixed(i64::from(scale)).ok_or_else(|| RouteFailure::OutOfReach {
         reason: "a start value of the kernel route has no finite enclosure".to_owned(),
     })
