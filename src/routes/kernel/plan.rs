@@ -101,7 +101,7 @@ impl Sizes {
 }
 
 /// A ratio in `(1, widest)` that makes `cost` small: a golden-section search in `ln((ratio - 1)/(widest - ratio))`.
-pub(super) fn best_ratio(widest: f64, cost: impl Fn(f64) -> f64) -> f64 {
+pub(in crate::routes) fn best_ratio(widest: f64, cost: impl Fn(f64) -> f64) -> f64 {
     const GOLDEN: f64 = 0.618_033_988_749_895;
     let place = |u: f64| (1.0 + widest * u.exp()) / (1.0 + u.exp());
     let (mut low, mut high) = (-9.0, 9.0);

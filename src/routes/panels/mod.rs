@@ -17,6 +17,8 @@
 //! [`super::kernel::panel`]; iterated integrals are term-by-term integrals, their constants carried inward from the far end ([`chain`]).
 //! A carrier wave multiplies `F` by a power series ([`wave`]). At the cone the functions of the outermost knot have a logarithm. `Q` is
 //! a polynomial with a proven error on every panel ([`expansion`]), and `|Q|^2` is integrated exactly ([`squares`]).
+//! Farther away than the packet's own size the knots would nearly cancel, and a carrier would need short panels; there one Taylor series of
+//! `g` and the packet's moments take over ([`far`]).
 //!
 //! # Bounds
 //!
@@ -34,6 +36,8 @@
 
 mod chain;
 mod expansion;
+mod far;
+mod moments;
 mod plan;
 mod profile;
 mod shape;
@@ -49,10 +53,11 @@ use crate::functions::elementary::{exp, pi, sqrt};
 use crate::packets::piecewise::{Carrier, PiecewisePacket};
 use chain::{Carried, Frame, Levels};
 use expansion::{ComplexList, Expansion, Factor};
-use plan::{Panel, Plan};
+use moments::Moments;
+use plan::{FarPanel, Panel, Plan};
 use rayon::prelude::*;
 use rug::{Float, Rational};
-use shape::Shape;
+use shape::{Knot, Shape};
 
 /// Which sides of the packet count.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -176,8 +181,30 @@ struct OneSide {
 fn probability(side: &Side, digits: u32, effort: &Effort) -> Result<OneSide, RouteFailure> {
     let plan = Plan::new(side, digits)?;
     effort.allow_bits(plan.bits)?;
-    let series = all_series(side, &plan, effort)?;
-    let mut carried = at_far_end(side, &plan);
+    let mut total = near_integral(side, &plan, effort)?;
+    for integral in far_integrals(side, &plan, effort)? {
+        total = total.add(&integral, plan.bits);
+    }
+    let tail = tail_bound(side, &plan.squared_end());
+    let half = Real::from_float(tail.to_float()).shift(-1);
+    total = total.add(&half, plan.bits).widen(half.abs_upper());
+    let ratio = Rational::from(side.time.square_ref()) / &side.shape.norm;
+    let prefactor = Real::from_rational(&ratio, plan.bits).div(&pi(plan.bits).square(plan.bits), plan.bits);
+    Ok(OneSide {
+        value: total.mul(&prefactor, plan.bits),
+        bits: plan.bits,
+        nodes: plan.terms(),
+        witness: witness(&plan, tail),
+    })
+}
+
+/// `Int |Q|^2` over the panels that are treated knot by knot.
+fn near_integral(side: &Side, plan: &Plan, effort: &Effort) -> Result<Real, RouteFailure> {
+    if plan.panels.is_empty() && plan.cone.is_none() {
+        return Ok(Real::zero());
+    }
+    let series = all_series(side, plan, effort)?;
+    let mut carried = if plan.far.is_empty() { at_far_end(side, plan) } else { at_common_point(side, plan, effort)? };
     let mut pieces = Vec::with_capacity(plan.panels.len());
     for (panel, list) in plan.panels.iter().zip(&series).rev() {
         effort.check()?;
@@ -206,17 +233,21 @@ fn probability(side: &Side, digits: u32, effort: &Effort) -> Result<OneSide, Rou
     for integral in &integrals {
         total = total.add(integral, plan.bits);
     }
-    let tail = tail_bound(side, &plan.squared_end());
-    let half = Real::from_float(tail.to_float()).shift(-1);
-    total = total.add(&half, plan.bits).widen(half.abs_upper());
-    let ratio = Rational::from(side.time.square_ref()) / &side.shape.norm;
-    let prefactor = Real::from_rational(&ratio, plan.bits).div(&pi(plan.bits).square(plan.bits), plan.bits);
-    Ok(OneSide {
-        value: total.mul(&prefactor, plan.bits),
-        bits: plan.bits,
-        nodes: plan.terms(),
-        witness: witness(&plan, tail),
-    })
+    Ok(total)
+}
+
+/// `Int |Q|^2` over each panel that is treated by moments.
+fn far_integrals(side: &Side, plan: &Plan, effort: &Effort) -> Result<Vec<Real>, RouteFailure> {
+    let Some(count) = plan.far.iter().map(|panel| panel.moments).max() else { return Ok(Vec::new()) };
+    let scale = plan.moment_scale;
+    let kappa = wave_number(side, wave_bits(scale));
+    let moments = Moments::new(&side.shape, kappa.as_ref(), count, scale, effort)?;
+    let one = |panel: &FarPanel| -> Result<Real, RouteFailure> {
+        let q = far::on_panel(side, panel, &moments, effort)?;
+        let sum = squares::on_panel(&q, size_bound(side, &panel.from), panel.scale);
+        Ok(sum.mul(&Real::from_rational(&panel.half_width(), plan.bits), plan.bits))
+    };
+    if plan.bits >= PARALLEL_FROM { plan.far.par_iter().map(one).collect() } else { plan.far.iter().map(one).collect() }
 }
 
 /// The series of `F` about every knot on every panel.
@@ -241,12 +272,35 @@ fn all_series(side: &Side, plan: &Plan, effort: &Effort) -> Result<Vec<Vec<Panel
 /// Lemma N1 at the far end, for every knot.
 fn at_far_end(side: &Side, plan: &Plan) -> Vec<Carried> {
     let end = plan.far_end();
-    let of_knot = |knot: &shape::Knot| {
+    let of_knot = |knot: &Knot| {
         let bound = function_bound(&side.time, &Rational::from(&end + &knot.depth));
         let upper = Complex::zero().widen(bound);
         Carried { base: Real::zero().widen(bound), upper: vec![upper; side.shape.levels(knot).saturating_sub(1)] }
     };
     side.shape.knots.iter().map(of_knot).collect()
+}
+
+/// All functions at the outer end of the near panels, when their constants are free: zero at the point `t + s + 2a` that the
+/// last knot reaches there.
+///
+/// `Q` does not depend on the constants as long as all knots use the same functions `F, Phi_1, Phi_2, ...`, each of them minus
+/// the derivative of the next (`Phi_1` being `e^(-i kappa v) F`): integration by parts needs nothing else.
+fn at_common_point(side: &Side, plan: &Plan, effort: &Effort) -> Result<Vec<Carried>, RouteFailure> {
+    let mut all = Vec::with_capacity(side.shape.knots.len());
+    for (knot, panels) in side.shape.knots.iter().zip(&plan.extensions) {
+        let count = side.shape.levels(knot).saturating_sub(1);
+        let mut carried = Carried { base: Real::zero(), upper: vec![Complex::zero(); count] };
+        for panel in panels.iter().rev() {
+            effort.check()?;
+            let (centre, half) = (panel.centre(), panel.half_width());
+            let terms = panel.terms.first().copied().unwrap_or(1);
+            let s = Rational::from(&centre + &knot.depth);
+            let series = PanelSeries::about(&side.time, &s, &half, panel.scale, terms, effort)?;
+            carried = on_knot(side, knot, panel, &series, &carried, effort)?.1;
+        }
+        all.push(carried);
+    }
+    Ok(all)
 }
 
 /// The wave number of the carrier.
@@ -261,55 +315,80 @@ fn wave_number(side: &Side, bits: Bits) -> Option<Real> {
     }
 }
 
-/// `exp(-i kappa (s + depth))` about `s = centre` as a series in `(s - centre)/stretch`.
+/// `exp(-i kappa (s + depth))` about `s = centre`, precise enough for a product with `first`.
 fn knot_wave(
-    kappa: &Real,
-    (centre, stretch): (&Rational, &Rational),
-    depth: &Rational,
-    scale: u32,
+    side: &Side,
+    knot: &Knot,
+    first: &Expansion,
+    (centre, frame): (&Rational, &Frame<'_>),
     effort: &Effort,
-) -> Result<Factor, RouteFailure> {
-    let bits = kappa.midpoint().prec();
-    let phase = kappa.mul(&Real::from_rational(&Rational::from(centre + depth), bits), bits).neg();
-    let rate = kappa.mul(&Real::from_rational(stretch, bits), bits).neg();
-    wave::wave([&phase, &rate], scale, effort)
+) -> Result<Option<Factor>, RouteFailure> {
+    let scale = frame.scale + excess(first, frame.scale);
+    let bits = wave_bits(scale);
+    let Some(kappa) = wave_number(side, bits) else { return Ok(None) };
+    let phase = kappa.mul(&Real::from_rational(&Rational::from(centre + &knot.depth), bits), bits).neg();
+    let rate = kappa.mul(&Real::from_rational(frame.stretch, bits), bits).neg();
+    wave::wave([&phase, &rate], scale, effort).map(Some)
 }
 
-/// The real standing wave from `Q`: the real part of `e^(i kappa x) Q`, or of `-i` times it for even modes.
-fn standing(
+/// `Q` from the functions of all knots. For a standing wave, which is real, the real part of `e^(i kappa x) Q`, or of `-i` times it for
+/// even modes.
+fn total(
     side: &Side,
-    q: Expansion,
-    kappa: &Real,
-    (centre, stretch): (&Rational, &Rational),
-    scale: u32,
+    all: &[Levels],
+    (centre, frame): (&Rational, &Frame<'_>),
     effort: &Effort,
 ) -> Result<Expansion, RouteFailure> {
+    let kappa = wave_number(side, wave_bits(frame.scale));
+    let q = chain::combined(side, all, kappa.as_ref(), frame)?;
     let Carrier::Standing(mode) = side.shape.carrier else { return Ok(q) };
-    let bits = kappa.midpoint().prec();
+    let scale = frame.scale + excess(&q, frame.scale);
+    let bits = wave_bits(scale);
+    let Some(kappa) = wave_number(side, bits) else { return Ok(q) };
     let x = Rational::from(&side.shape.half_width + centre);
     let mut phase = kappa.mul(&Real::from_rational(&x, bits), bits);
     if mode % 2 == 0 {
         phase = phase.sub(&pi(bits).shift(-1), bits);
     }
-    let rate = kappa.mul(&Real::from_rational(stretch, bits), bits);
-    let factor = wave::wave([&phase, &rate], scale + excess(&q.regular, &q.logarithm, scale), effort)?;
-    Ok(q.times(&factor, scale).real_part())
+    let rate = kappa.mul(&Real::from_rational(frame.stretch, bits), bits);
+    let factor = wave::wave([&phase, &rate], scale, effort)?;
+    Ok(q.times(&factor, frame.scale).real_part())
 }
 
 /// Bits by which coefficients exceed one.
-fn excess(regular: &ComplexList, logarithm: &ComplexList, scale: u32) -> u32 {
-    regular.bits().max(logarithm.bits()).saturating_sub(scale) + 4
+fn excess(series: &Expansion, scale: u32) -> u32 {
+    series.regular.bits().max(series.logarithm.bits()).saturating_sub(scale) + 4
 }
 
-/// Precision of wave numbers, enough for phases up to `2^200`.
+/// Precision of wave numbers and phases.
 fn wave_bits(scale: u32) -> Bits {
-    2 * scale + 256
+    scale + 96
 }
 
 /// Lists on which `F` is known on a panel.
 fn first_level(anchored: Anchored) -> Expansion {
     let regular = ComplexList::real(anchored.coefficients);
     Expansion { regular, logarithm: ComplexList::default(), error: anchored.error }
+}
+
+/// The functions of one knot on a panel, and what is carried on to the next.
+fn on_knot(
+    side: &Side,
+    knot: &Knot,
+    panel: &Panel,
+    series: &PanelSeries,
+    carried: &Carried,
+    effort: &Effort,
+) -> Result<(Levels, Carried), RouteFailure> {
+    let (centre, stretch, scale) = (panel.centre(), panel.half_width(), panel.scale);
+    let frame = Frame { stretch: &stretch, scale };
+    let anchored = series.anchored(&carried.base, scale)?;
+    let base = anchored.left_value.clone();
+    let first = first_level(anchored);
+    let wave = knot_wave(side, knot, &first, (&centre, &frame), effort)?;
+    let levels = chain::levels(first, wave.as_ref(), (carried, Rational::from(1)), &frame)?;
+    let upper = chain::at_left(&levels, &frame);
+    Ok((levels, Carried { base, upper }))
 }
 
 /// `Q` on a panel, and what is carried on to the next.
@@ -322,32 +401,17 @@ fn on_panel(
 ) -> Result<(Expansion, Vec<Carried>), RouteFailure> {
     let (centre, stretch, scale) = (panel.centre(), panel.half_width(), panel.scale);
     let frame = Frame { stretch: &stretch, scale };
-    let kappa = wave_number(side, wave_bits(scale));
     let mut all = Vec::with_capacity(series.len());
     let mut next = Vec::with_capacity(series.len());
     for ((knot, series), before) in side.shape.knots.iter().zip(series).zip(carried) {
-        let anchored = series.anchored(&before.base, scale)?;
-        let base = anchored.left_value.clone();
-        let first = first_level(anchored);
-        let wave = match &kappa {
-            Some(kappa) => {
-                let scale = scale + excess(&first.regular, &first.logarithm, scale);
-                Some(knot_wave(kappa, (&centre, &stretch), &knot.depth, scale, effort)?)
-            }
-            None => None,
-        };
-        let levels = chain::levels(first, wave.as_ref(), (before, Rational::from(1)), &frame)?;
-        next.push(Carried { base, upper: chain::at_left(&levels, &frame) });
+        let (levels, after) = on_knot(side, knot, panel, series, before, effort)?;
         all.push(levels);
+        next.push(after);
     }
     if !panel.squared {
         return Ok((Expansion::zero(), next));
     }
-    let mut q = chain::combined(side, &all, kappa.as_ref(), &frame)?;
-    if let Some(kappa) = &kappa {
-        q = standing(side, q, kappa, (&centre, &stretch), scale, effort)?;
-    }
-    Ok((q, next))
+    Ok((total(side, &all, (&centre, &frame), effort)?, next))
 }
 
 /// `Q` on the panel at the cone, in powers of `y = s/width` and `ln y`.
@@ -355,7 +419,6 @@ fn at_cone(side: &Side, panel: &Panel, carried: &[Carried], effort: &Effort) -> 
     let (stretch, scale) = (&panel.to, panel.scale);
     let frame = Frame { stretch, scale };
     let origin = Rational::new();
-    let kappa = wave_number(side, wave_bits(scale));
     let mut all: Vec<Levels> = Vec::with_capacity(carried.len());
     for (index, ((knot, terms), before)) in side.shape.knots.iter().zip(&panel.terms).zip(carried).enumerate() {
         let (first, factor) = if index == 0 {
@@ -368,20 +431,10 @@ fn at_cone(side: &Side, panel: &Panel, carried: &[Carried], effort: &Effort) -> 
             let series = PanelSeries::about(&side.time, &knot.depth, stretch, scale, *terms, effort)?;
             (first_level(series.anchored(&before.base, scale)?), Rational::from(1))
         };
-        let wave = match &kappa {
-            Some(kappa) => {
-                let scale = scale + excess(&first.regular, &first.logarithm, scale);
-                Some(knot_wave(kappa, (&origin, stretch), &knot.depth, scale, effort)?)
-            }
-            None => None,
-        };
+        let wave = knot_wave(side, knot, &first, (&origin, &frame), effort)?;
         all.push(chain::levels(first, wave.as_ref(), (before, factor), &frame)?);
     }
-    let q = chain::combined(side, &all, kappa.as_ref(), &frame)?;
-    match &kappa {
-        Some(kappa) => standing(side, q, kappa, (&origin, stretch), scale, effort),
-        None => Ok(q),
-    }
+    total(side, &all, (&origin, &frame), effort)
 }
 
 /// `e^(-r) (1 + 1/(2r)) sqrt(pi/(2r))`: Lemma N2 at `v = t + s`, with `r`.
@@ -398,11 +451,18 @@ fn mass_bound(side: &Side) -> Real {
     Real::from_rational(&(Rational::from(&side.shape.half_width * 2) * &side.shape.norm), BOUND_BITS)
 }
 
+/// Bound of `g` at `v = t + s`, infinite if `s` is not positive.
+fn kernel_bound(time: &Rational, s: &Rational) -> Magnitude {
+    if *s <= 0 {
+        return Magnitude::INFINITY;
+    }
+    let (k1, r) = k1_bound(time, s);
+    k1.div(&r, BOUND_BITS).abs_upper()
+}
+
 /// Lemma N3 for `|Q|` at `s` and beyond.
 fn size_bound(side: &Side, s: &Rational) -> Magnitude {
-    let (k1, r) = k1_bound(&side.time, s);
-    let root = sqrt(&mass_bound(side), BOUND_BITS);
-    k1.div(&r, BOUND_BITS).mul(&root, BOUND_BITS).abs_upper()
+    sqrt(&mass_bound(side), BOUND_BITS).abs_upper().mul(kernel_bound(&side.time, s))
 }
 
 /// Lemma N3 for the integral of `|Q|^2` beyond `s`.
@@ -427,6 +487,13 @@ fn witness(plan: &Plan, tail: Magnitude) -> Vec<(String, String)> {
     }
     for (index, panel) in plan.panels.iter().enumerate() {
         describe(format!("panel {}", index + 1), panel);
+    }
+    for (index, panel) in plan.far.iter().enumerate() {
+        let text = format!(
+            "s from {} to {}, {} terms and {} moments, 2^-{} units",
+            panel.from, panel.to, panel.terms, panel.moments, panel.scale
+        );
+        list.push((format!("panel {}, by moments", plan.panels.len() + index + 1), text));
     }
     list.push(("tail bound".to_owned(), decimal::upper_decimal(&tail.to_float(), 4)));
     list
