@@ -51,6 +51,9 @@ pub(super) fn integral(coefficients: &[Integer], scale: u32) -> Real {
 /// The same for coefficients of either sign.
 pub(in crate::routes) fn signed_integral(coefficients: &[Integer], scale: u32) -> Real {
     weighted(coefficients, scale, |list| {
+        if list.len() < PACK_FROM {
+            return (by_pairs(list), Magnitude::ZERO);
+        }
         let list: Vec<Integer> = list.iter().map(|value| (*value).clone()).collect();
         (signed_product(&list, &list), Magnitude::ZERO)
     })

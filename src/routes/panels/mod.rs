@@ -208,7 +208,7 @@ fn near_integral(side: &Side, plan: &Plan, effort: &Effort) -> Result<Real, Rout
     let mut pieces = Vec::with_capacity(plan.panels.len());
     for (panel, list) in plan.panels.iter().zip(&series).rev() {
         effort.check()?;
-        let (piece, next) = on_panel(side, panel, list, &carried, effort)?;
+        let (piece, next) = on_panel(side, panel, list, &carried)?;
         carried = next;
         if panel.squared {
             pieces.push((piece, panel));
@@ -240,7 +240,7 @@ fn near_integral(side: &Side, plan: &Plan, effort: &Effort) -> Result<Real, Rout
 fn far_integrals(side: &Side, plan: &Plan, effort: &Effort) -> Result<Vec<Real>, RouteFailure> {
     let Some(count) = plan.far.iter().map(|panel| panel.moments).max() else { return Ok(Vec::new()) };
     let scale = plan.moment_scale;
-    let kappa = wave_number(side, wave_bits(scale));
+    let kappa = wave_number(side, scale + 96);
     let moments = Moments::new(&side.shape, kappa.as_ref(), count, scale, effort)?;
     let one = |panel: &FarPanel| -> Result<Real, RouteFailure> {
         let q = far::on_panel(side, panel, &moments, effort)?;
@@ -289,16 +289,15 @@ fn at_common_point(side: &Side, plan: &Plan, effort: &Effort) -> Result<Vec<Carr
     let mut all = Vec::with_capacity(side.shape.knots.len());
     for (knot, panels) in side.shape.knots.iter().zip(&plan.extensions) {
         let count = side.shape.levels(knot).saturating_sub(1);
-        let mut carried = Carried { base: Real::zero(), upper: vec![Complex::zero(); count] };
+        let mut carried = vec![Carried { base: Real::zero(), upper: vec![Complex::zero(); count] }];
         for panel in panels.iter().rev() {
             effort.check()?;
-            let (centre, half) = (panel.centre(), panel.half_width());
+            let (half, s) = (panel.half_width(), panel.centre() + &knot.depth);
             let terms = panel.terms.first().copied().unwrap_or(1);
-            let s = Rational::from(&centre + &knot.depth);
             let series = PanelSeries::about(&side.time, &s, &half, panel.scale, terms, effort)?;
-            carried = on_knot(side, knot, panel, &series, &carried, effort)?.1;
+            carried = on_knots(side, std::slice::from_ref(knot), panel, (&[series], &carried))?.1;
         }
-        all.push(carried);
+        all.append(&mut carried);
     }
     Ok(all)
 }
@@ -315,43 +314,53 @@ fn wave_number(side: &Side, bits: Bits) -> Option<Real> {
     }
 }
 
-/// `exp(-i kappa (s + depth))` about `s = centre`, precise enough for a product with `first`.
-fn knot_wave(
-    side: &Side,
-    knot: &Knot,
-    first: &Expansion,
-    (centre, frame): (&Rational, &Frame<'_>),
-    effort: &Effort,
-) -> Result<Option<Factor>, RouteFailure> {
-    let scale = frame.scale + excess(first, frame.scale);
-    let bits = wave_bits(scale);
-    let Some(kappa) = wave_number(side, bits) else { return Ok(None) };
-    let phase = kappa.mul(&Real::from_rational(&Rational::from(centre + &knot.depth), bits), bits).neg();
-    let rate = kappa.mul(&Real::from_rational(frame.stretch, bits), bits).neg();
-    wave::wave([&phase, &rate], scale, effort).map(Some)
+/// The carrier on a panel.
+struct Waves {
+    kappa: Real,
+    /// `exp(-i kappa (s - centre))`.
+    series: Factor,
+    centre: Rational,
+}
+
+impl Waves {
+    /// Precise enough for a product with any of the given functions.
+    fn new<'e>(
+        side: &Side,
+        centre: &Rational,
+        frame: &Frame<'_>,
+        firsts: impl Iterator<Item = &'e Expansion>,
+    ) -> Result<Option<Waves>, RouteFailure> {
+        let scale = frame.scale + firsts.map(|first| excess(first, frame.scale)).max().unwrap_or(0);
+        let bits = scale + 96;
+        let Some(kappa) = wave_number(side, bits) else { return Ok(None) };
+        let rate = kappa.mul(&Real::from_rational(frame.stretch, bits), bits).neg();
+        let series = wave::wave(&rate, scale)?;
+        Ok(Some(Waves { kappa, series, centre: centre.clone() }))
+    }
+
+    /// `kappa` times a length.
+    fn phase(&self, length: &Rational) -> Real {
+        let bits = self.kappa.midpoint().prec();
+        self.kappa.mul(&Real::from_rational(length, bits), bits)
+    }
+
+    /// `exp(-i kappa (s + depth))`.
+    fn at(&self, depth: &Rational) -> Result<Factor, RouteFailure> {
+        self.series.turned(&self.phase(&Rational::from(&self.centre + depth)).neg())
+    }
 }
 
 /// `Q` from the functions of all knots. For a standing wave, which is real, the real part of `e^(i kappa x) Q`, or of `-i` times it for
 /// even modes.
-fn total(
-    side: &Side,
-    all: &[Levels],
-    (centre, frame): (&Rational, &Frame<'_>),
-    effort: &Effort,
-) -> Result<Expansion, RouteFailure> {
-    let kappa = wave_number(side, wave_bits(frame.scale));
-    let q = chain::combined(side, all, kappa.as_ref(), frame)?;
-    let Carrier::Standing(mode) = side.shape.carrier else { return Ok(q) };
-    let scale = frame.scale + excess(&q, frame.scale);
-    let bits = wave_bits(scale);
-    let Some(kappa) = wave_number(side, bits) else { return Ok(q) };
-    let x = Rational::from(&side.shape.half_width + centre);
-    let mut phase = kappa.mul(&Real::from_rational(&x, bits), bits);
+fn total(side: &Side, all: &[Levels], waves: Option<&Waves>, frame: &Frame<'_>) -> Result<Expansion, RouteFailure> {
+    let q = chain::combined(side, all, waves.map(|waves| &waves.kappa), frame)?;
+    let (Some(waves), Carrier::Standing(mode)) = (waves, &side.shape.carrier) else { return Ok(q) };
+    let mut phase = waves.phase(&Rational::from(&side.shape.half_width + &waves.centre));
     if mode % 2 == 0 {
+        let bits = phase.midpoint().prec();
         phase = phase.sub(&pi(bits).shift(-1), bits);
     }
-    let rate = kappa.mul(&Real::from_rational(frame.stretch, bits), bits);
-    let factor = wave::wave([&phase, &rate], scale, effort)?;
+    let factor = waves.series.conj().turned(&phase)?;
     Ok(q.times(&factor, frame.scale).real_part())
 }
 
@@ -360,35 +369,38 @@ fn excess(series: &Expansion, scale: u32) -> u32 {
     series.regular.bits().max(series.logarithm.bits()).saturating_sub(scale) + 4
 }
 
-/// Precision of wave numbers and phases.
-fn wave_bits(scale: u32) -> Bits {
-    scale + 96
-}
-
 /// Lists on which `F` is known on a panel.
 fn first_level(anchored: Anchored) -> Expansion {
     let regular = ComplexList::real(anchored.coefficients);
     Expansion { regular, logarithm: ComplexList::default(), error: anchored.error }
 }
 
-/// The functions of one knot on a panel, and what is carried on to the next.
-fn on_knot(
+/// The functions of some knots on a panel, what is carried on to the next, and the carrier.
+fn on_knots(
     side: &Side,
-    knot: &Knot,
+    knots: &[Knot],
     panel: &Panel,
-    series: &PanelSeries,
-    carried: &Carried,
-    effort: &Effort,
-) -> Result<(Levels, Carried), RouteFailure> {
+    (series, carried): (&[PanelSeries], &[Carried]),
+) -> Result<(Vec<Levels>, Vec<Carried>, Option<Waves>), RouteFailure> {
     let (centre, stretch, scale) = (panel.centre(), panel.half_width(), panel.scale);
     let frame = Frame { stretch: &stretch, scale };
-    let anchored = series.anchored(&carried.base, scale)?;
-    let base = anchored.left_value.clone();
-    let first = first_level(anchored);
-    let wave = knot_wave(side, knot, &first, (&centre, &frame), effort)?;
-    let levels = chain::levels(first, wave.as_ref(), (carried, Rational::from(1)), &frame)?;
-    let upper = chain::at_left(&levels, &frame);
-    Ok((levels, Carried { base, upper }))
+    let mut firsts = Vec::with_capacity(knots.len());
+    let mut bases = Vec::with_capacity(knots.len());
+    for (series, before) in series.iter().zip(carried) {
+        let anchored = series.anchored(&before.base, scale)?;
+        bases.push(anchored.left_value.clone());
+        firsts.push(first_level(anchored));
+    }
+    let waves = Waves::new(side, &centre, &frame, firsts.iter())?;
+    let mut all = Vec::with_capacity(knots.len());
+    let mut next = Vec::with_capacity(knots.len());
+    for (((knot, first), base), before) in knots.iter().zip(firsts).zip(bases).zip(carried) {
+        let wave = waves.as_ref().map(|waves| waves.at(&knot.depth)).transpose()?;
+        let levels = chain::levels(first, wave.as_ref(), (before, Rational::from(1)), &frame)?;
+        next.push(Carried { base, upper: chain::at_left(&levels, &frame) });
+        all.push(levels);
+    }
+    Ok((all, next, waves))
 }
 
 /// `Q` on a panel, and what is carried on to the next.
@@ -397,44 +409,41 @@ fn on_panel(
     panel: &Panel,
     series: &[PanelSeries],
     carried: &[Carried],
-    effort: &Effort,
 ) -> Result<(Expansion, Vec<Carried>), RouteFailure> {
-    let (centre, stretch, scale) = (panel.centre(), panel.half_width(), panel.scale);
-    let frame = Frame { stretch: &stretch, scale };
-    let mut all = Vec::with_capacity(series.len());
-    let mut next = Vec::with_capacity(series.len());
-    for ((knot, series), before) in side.shape.knots.iter().zip(series).zip(carried) {
-        let (levels, after) = on_knot(side, knot, panel, series, before, effort)?;
-        all.push(levels);
-        next.push(after);
-    }
+    let (all, next, waves) = on_knots(side, &side.shape.knots, panel, (series, carried))?;
     if !panel.squared {
         return Ok((Expansion::zero(), next));
     }
-    Ok((total(side, &all, (&centre, &frame), effort)?, next))
+    let stretch = panel.half_width();
+    let frame = Frame { stretch: &stretch, scale: panel.scale };
+    Ok((total(side, &all, waves.as_ref(), &frame)?, next))
 }
 
 /// `Q` on the panel at the cone, in powers of `y = s/width` and `ln y`.
 fn at_cone(side: &Side, panel: &Panel, carried: &[Carried], effort: &Effort) -> Result<Expansion, RouteFailure> {
     let (stretch, scale) = (&panel.to, panel.scale);
     let frame = Frame { stretch, scale };
-    let origin = Rational::new();
-    let mut all: Vec<Levels> = Vec::with_capacity(carried.len());
+    let mut firsts = Vec::with_capacity(carried.len());
     for (index, ((knot, terms), before)) in side.shape.knots.iter().zip(&panel.terms).zip(carried).enumerate() {
-        let (first, factor) = if index == 0 {
+        firsts.push(if index == 0 {
             let parts = edge::logarithmic(&side.time, stretch, (*terms, scale), &before.base, effort)?;
             let unit = Magnitude::power_of_two(-i64::from(scale));
             let error = parts.regular_error.max(parts.logarithm_error).mul(unit).add(parts.truncation);
             let (regular, logarithm) = (ComplexList::real(parts.regular), ComplexList::real(parts.logarithm));
-            (Expansion { regular, logarithm, error }, Rational::from(&side.time * 2))
+            Expansion { regular, logarithm, error }
         } else {
             let series = PanelSeries::about(&side.time, &knot.depth, stretch, scale, *terms, effort)?;
-            (first_level(series.anchored(&before.base, scale)?), Rational::from(1))
-        };
-        let wave = knot_wave(side, knot, &first, (&origin, &frame), effort)?;
+            first_level(series.anchored(&before.base, scale)?)
+        });
+    }
+    let waves = Waves::new(side, &Rational::new(), &frame, firsts.iter())?;
+    let mut all: Vec<Levels> = Vec::with_capacity(carried.len());
+    for (index, ((knot, first), before)) in side.shape.knots.iter().zip(firsts).zip(carried).enumerate() {
+        let factor = if index == 0 { Rational::from(&side.time * 2) } else { Rational::from(1) };
+        let wave = waves.as_ref().map(|waves| waves.at(&knot.depth)).transpose()?;
         all.push(chain::levels(first, wave.as_ref(), (before, factor), &frame)?);
     }
-    total(side, &all, (&origin, &frame), effort)
+    total(side, &all, waves.as_ref(), &frame)
 }
 
 /// `e^(-r) (1 + 1/(2r)) sqrt(pi/(2r))`: Lemma N2 at `v = t + s`, with `r`.

@@ -177,7 +177,13 @@ impl Planner<'_> {
 
     /// From here on moments are cheaper: nearer for a carrier wave, which makes panels short.
     fn far_start(&self) -> f64 {
-        if self.profile.kappa == 0.0 { 2.0 * self.profile.width } else { self.profile.width }
+        let width = self.profile.width;
+        if self.profile.kappa > 0.0 {
+            return width;
+        }
+        // At s the moments are about (goal + 10)/ln(s/a) in number; the work on knots grows with their functions.
+        let most = 16.0 + 6.0 * self.profile.functions();
+        (2.0 * width).max(0.5 * width * ((self.goal + 10.0) / most).min(300.0).exp())
     }
 
     /// Growing panels from `start` until the rest is negligible: those treated knot by knot, and those treated by moments.

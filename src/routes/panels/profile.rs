@@ -73,6 +73,11 @@ impl Profile {
         self.knots.get(1).map_or(self.width, |knot| knot.depth)
     }
 
+    /// Number of functions that all knots need together.
+    pub(super) fn functions(&self) -> f64 {
+        self.knots.iter().map(|knot| knot.sizes.len() as f64).sum()
+    }
+
     /// Logarithm of `sum |c_kj + i kappa c_k(j-1)| reach^j`: what an error of `F` does to `Q` within `reach`.
     pub(super) fn log_weight(&self, reach: f64) -> f64 {
         let at = |knot: &Knot| knot.sizes.iter().rev().fold(0.0, |sum, size| sum * reach + size);
