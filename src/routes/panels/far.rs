@@ -36,7 +36,10 @@ pub(super) fn on_panel(
     let reach = Rational::from(&half + a);
     let centre = panel.centre() + a;
     let place = (&side.time, &centre, &reach);
-    let (kernel, kernel_error) = kernel_series(place, panel.scale, panel.terms, super::kernel_bound, effort)?;
+    let (kernel, mut kernel_error) = kernel_series(place, panel.scale, panel.terms, super::kernel_bound, effort)?;
+    if crate::spoil::is_active(crate::spoil::Fault::FarTruncationForgotten) {
+        kernel_error = Magnitude::ZERO;
+    }
     let scaled = ScaledMoments::new(moments, &Rational::from(a / &reach), panel)?;
     let sums = correlation(&kernel, &scaled.list, effort)?;
     let alpha = half / &reach;
@@ -45,7 +48,10 @@ pub(super) fn on_panel(
     let through_kernel = kernel_error.mul(moments.size).mul(upper(&Rational::from(a / &reach)));
     let through_moments = scaled.error.mul(grown_sum(&kernel, upper(&alpha), panel.scale));
     let (regular, rounding) = with_powers(sums, &alpha, panel);
-    let error = through_kernel.add(through_moments).add(rounding);
+    let mut error = through_kernel.add(through_moments).add(rounding);
+    if crate::spoil::is_active(crate::spoil::Fault::MomentErrorForgotten) {
+        error = through_kernel.add(rounding);
+    }
     Ok(Expansion { regular, logarithm: ComplexList::default(), error })
 }
 

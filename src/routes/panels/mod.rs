@@ -476,6 +476,9 @@ fn size_bound(side: &Side, s: &Rational) -> Magnitude {
 
 /// Lemma N3 for the integral of `|Q|^2` beyond `s`.
 fn tail_bound(side: &Side, s: &Rational) -> Magnitude {
+    if crate::spoil::is_active(crate::spoil::Fault::PiecewiseTailForgotten) {
+        return Magnitude::ZERO;
+    }
     let bits = BOUND_BITS;
     let (k1, r) = k1_bound(&side.time, s);
     let v = Real::from_rational(&Rational::from(&side.time + s), bits);
