@@ -26,12 +26,6 @@ pub enum Fault {
     DilogarithmSeriesCut = 8,
     /// What lies beyond the last panel of a piecewise packet is left out.
     PiecewiseTailForgotten = 40,
-    /// The truncation of the kernel's far series of a piecewise packet is left out.
-    FarTruncationForgotten = 41,
-    /// The rounding of the moments of a piecewise packet is left out.
-    MomentErrorForgotten = 42,
-    /// A constant of integration is handed on without its error.
-    CarriedErrorForgotten = 43,
 }
 
 #[cfg(feature = "spoil")]

@@ -209,7 +209,7 @@ impl PiecewisePacket {
             // u(-x) = -u(x): about the left knot -ends[1], x = -ends[1] + z, u = -outward(ends[1] - z).
             let length = Rational::from(&ends[1] - &ends[0]);
             let about_right = expanded_about(piece, &length);
-            let sign = |n: usize| Rational::from(if n % 2 == 0 { -1 } else { 1 });
+            let sign = |n: usize| Rational::from(if n.is_multiple_of(2) { -1 } else { 1 });
             about_right.iter().enumerate().map(|(n, c)| c.times(&sign(n))).collect::<Vec<ExactComplex>>()
         });
         let all_pieces: Vec<Vec<ExactComplex>> = inward.chain(outward.iter().cloned()).collect();

@@ -158,12 +158,7 @@ impl Expansion {
             for (n, coefficient) in list.iter().enumerate() {
                 if n % 2 == 0 { sum += coefficient } else { sum -= coefficient }
             }
-            let error = if crate::spoil::is_active(crate::spoil::Fault::CarriedErrorForgotten) {
-                Magnitude::ZERO
-            } else {
-                self.error
-            };
-            Real::from_scaled(&sum, -i64::from(scale)).widen(error)
+            Real::from_scaled(&sum, -i64::from(scale)).widen(self.error)
         };
         Complex::new(value(&self.regular.re), value(&self.regular.im))
     }

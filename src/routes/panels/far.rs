@@ -36,10 +36,7 @@ pub(super) fn on_panel(
     let reach = Rational::from(&half + a);
     let centre = panel.centre() + a;
     let place = (&side.time, &centre, &reach);
-    let (kernel, mut kernel_error) = kernel_series(place, panel.scale, panel.terms, super::kernel_bound, effort)?;
-    if crate::spoil::is_active(crate::spoil::Fault::FarTruncationForgotten) {
-        kernel_error = Magnitude::ZERO;
-    }
+    let (kernel, kernel_error) = kernel_series(place, panel.scale, panel.terms, super::kernel_bound, effort)?;
     let scaled = ScaledMoments::new(moments, &Rational::from(a / &reach), panel)?;
     let sums = correlation(&kernel, &scaled.list, effort)?;
     let alpha = half / &reach;
@@ -48,10 +45,7 @@ pub(super) fn on_panel(
     let through_kernel = kernel_error.mul(moments.size).mul(upper(&Rational::from(a / &reach)));
     let through_moments = scaled.error.mul(grown_sum(&kernel, upper(&alpha), panel.scale));
     let (regular, rounding) = with_powers(sums, &alpha, panel);
-    let mut error = through_kernel.add(through_moments).add(rounding);
-    if crate::spoil::is_active(crate::spoil::Fault::MomentErrorForgotten) {
-        error = through_kernel.add(rounding);
-    }
+    let error = through_kernel.add(through_moments).add(rounding);
     Ok(Expansion { regular, logarithm: ComplexList::default(), error })
 }
 
@@ -99,10 +93,10 @@ fn correlation(kernel: &[Integer], moments: &ComplexList, effort: &Effort) -> Re
         let mut product = value.clone();
         for k in 0..count.min(n + 1) {
             for (target, source) in [(&mut sums.re, &moments.re), (&mut sums.im, &moments.im)] {
-                if let (Some(entry), Some(moment)) = (target.get_mut(n - k), source.get(k)) {
-                    if *moment != 0 {
-                        *entry += &product * moment;
-                    }
+                if let (Some(entry), Some(moment)) = (target.get_mut(n - k), source.get(k))
+                    && *moment != 0
+                {
+                    *entry += &product * moment;
                 }
             }
             // C(n, k+1) = C(n, k) (n - k)/(k + 1), without remainder.

@@ -42,6 +42,8 @@ mod plan;
 mod profile;
 mod shape;
 mod squares;
+#[cfg(test)]
+mod tests;
 mod wave;
 
 use super::kernel::panel::{Anchored, PanelSeries};
@@ -295,7 +297,7 @@ fn at_common_point(side: &Side, plan: &Plan, effort: &Effort) -> Result<Vec<Carr
             let (half, s) = (panel.half_width(), panel.centre() + &knot.depth);
             let terms = panel.terms.first().copied().unwrap_or(1);
             let series = PanelSeries::about(&side.time, &s, &half, panel.scale, terms, effort)?;
-            carried = on_knots(side, std::slice::from_ref(knot), panel, (&[series], &carried))?.1;
+            carried = on_knots(side, std::slice::from_ref(knot), panel, (&[series], &carried))?.next;
         }
         all.append(&mut carried);
     }
@@ -376,12 +378,19 @@ fn first_level(anchored: Anchored) -> Expansion {
 }
 
 /// The functions of some knots on a panel, what is carried on to the next, and the carrier.
+struct OnKnots {
+    levels: Vec<Levels>,
+    next: Vec<Carried>,
+    waves: Option<Waves>,
+}
+
+/// Fills an [`OnKnots`].
 fn on_knots(
     side: &Side,
     knots: &[Knot],
     panel: &Panel,
     (series, carried): (&[PanelSeries], &[Carried]),
-) -> Result<(Vec<Levels>, Vec<Carried>, Option<Waves>), RouteFailure> {
+) -> Result<OnKnots, RouteFailure> {
     let (centre, stretch, scale) = (panel.centre(), panel.half_width(), panel.scale);
     let frame = Frame { stretch: &stretch, scale };
     let mut firsts = Vec::with_capacity(knots.len());
@@ -400,7 +409,7 @@ fn on_knots(
         next.push(Carried { base, upper: chain::at_left(&levels, &frame) });
         all.push(levels);
     }
-    Ok((all, next, waves))
+    Ok(OnKnots { levels: all, next, waves })
 }
 
 /// `Q` on a panel, and what is carried on to the next.
@@ -410,13 +419,13 @@ fn on_panel(
     series: &[PanelSeries],
     carried: &[Carried],
 ) -> Result<(Expansion, Vec<Carried>), RouteFailure> {
-    let (all, next, waves) = on_knots(side, &side.shape.knots, panel, (series, carried))?;
+    let OnKnots { levels, next, waves } = on_knots(side, &side.shape.knots, panel, (series, carried))?;
     if !panel.squared {
         return Ok((Expansion::zero(), next));
     }
     let stretch = panel.half_width();
     let frame = Frame { stretch: &stretch, scale: panel.scale };
-    Ok((total(side, &all, waves.as_ref(), &frame)?, next))
+    Ok((total(side, &levels, waves.as_ref(), &frame)?, next))
 }
 
 /// `Q` on the panel at the cone, in powers of `y = s/width` and `ln y`.
