@@ -24,6 +24,8 @@ pub enum Fault {
     BesselSeriesCut = 7,
     /// The power series of the dilogarithm is cut too early, without its tail bound.
     DilogarithmSeriesCut = 8,
+    /// What lies beyond the last panel of a piecewise packet is left out.
+    PiecewiseTailForgotten = 40,
 }
 
 #[cfg(feature = "spoil")]

@@ -5,6 +5,7 @@
 
 mod estimate;
 pub mod kernel;
+pub mod panels;
 pub mod spectral;
 
 use crate::arithmetic::{Bits, Interval};

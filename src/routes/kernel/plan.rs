@@ -58,26 +58,26 @@ pub(super) struct Plan {
 }
 
 /// The numbers that all choices rest on.
-struct Sizes {
-    t: f64,
-    a: f64,
+pub(in crate::routes) struct Sizes {
+    pub t: f64,
+    pub a: f64,
     /// Logarithm of the tolerance for the integral of `q^2`.
-    tolerance: f64,
+    pub tolerance: f64,
 }
 
 impl Sizes {
-    fn separation(&self, s: f64) -> f64 {
+    pub(in crate::routes) fn separation(&self, s: f64) -> f64 {
         s.sqrt() * (s + 2.0 * self.t).sqrt()
     }
 
     /// Logarithm of a bound of `F` at `v = t + s`.
-    fn log_function(&self, s: f64) -> f64 {
+    pub(in crate::routes) fn log_function(&self, s: f64) -> f64 {
         let r = self.separation(s);
         (1.3 / (r + 0.5) + (1.0 + 0.2 / r).ln()).ln() - r - (self.t + s).ln() + 0.3
     }
 
     /// Growth exponent of rounding errors over a panel, see `panel`.
-    fn growth(&self, centre: f64, half: f64) -> f64 {
+    pub(in crate::routes) fn growth(&self, centre: f64, half: f64) -> f64 {
         let d = centre * (centre + 2.0 * self.t);
         let balance = d.sqrt().max(1.0);
         let at = |x: f64| {
@@ -89,7 +89,7 @@ impl Sizes {
     }
 
     /// Terms after which the Taylor series about `centre` is below `exp(goal)`.
-    fn terms(&self, centre: f64, half: f64, goal: f64) -> usize {
+    pub(in crate::routes) fn terms(&self, centre: f64, half: f64, goal: f64) -> usize {
         let widest = centre / half;
         let cost = |ratio: f64| {
             let log = self.log_function(centre - ratio * half) - goal - (1.0 - 1.0 / ratio).ln() + 1.0;
@@ -101,7 +101,7 @@ impl Sizes {
 }
 
 /// A ratio in `(1, widest)` that makes `cost` small: a golden-section search in `ln((ratio - 1)/(widest - ratio))`.
-pub(super) fn best_ratio(widest: f64, cost: impl Fn(f64) -> f64) -> f64 {
+pub(in crate::routes) fn best_ratio(widest: f64, cost: impl Fn(f64) -> f64) -> f64 {
     const GOLDEN: f64 = 0.618_033_988_749_895;
     let place = |u: f64| (1.0 + widest * u.exp()) / (1.0 + u.exp());
     let (mut low, mut high) = (-9.0, 9.0);
