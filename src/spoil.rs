@@ -26,6 +26,8 @@ pub enum Fault {
     DilogarithmSeriesCut = 8,
     /// What lies beyond the last panel of a piecewise packet is left out.
     PiecewiseTailForgotten = 40,
+    /// What lies beyond the last node of the spectral sum of a general packet is left out of the bounds.
+    CutOffForgotten = 9,
 }
 
 #[cfg(feature = "spoil")]

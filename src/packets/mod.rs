@@ -4,7 +4,11 @@
 //! how probabilities are computed.
 
 pub mod box_packet;
+pub mod bspline;
 pub mod piecewise;
+pub mod waves;
 
 pub use box_packet::BoxPacket;
+pub use bspline::BSplinePacket;
 pub use piecewise::PiecewisePacket;
+pub use waves::{ExactComplex, WavePacket};

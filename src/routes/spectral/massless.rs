@@ -77,9 +77,9 @@
 //! from `1/(kappa_k + kappa_l) = T_(l-k)/kappa_k` and by splitting the double sum at `k = l`; `U_0` is a
 //! Lambert series ([`alternating_lambert`]).
 
-mod bounds;
-mod plan;
-mod sums;
+pub(in crate::routes) mod bounds;
+pub(in crate::routes) mod plan;
+pub(in crate::routes) mod sums;
 
 use super::far_field::alternating_lambert;
 use crate::arithmetic::{Magnitude, Real, decimal};
@@ -107,7 +107,7 @@ pub(super) fn evaluate(problem: &TailProblem, digits: u32, effort: &Effort) -> R
 /// `S_h` with the ends cut and the far weights replaced as planned, without the errors of doing so.
 fn lattice_sum(problem: &TailProblem, plan: &Plan, effort: &Effort) -> Result<Real, RouteFailure> {
     let nodes = Nodes::new(problem, plan, effort)?;
-    let couplings = Couplings::new(plan, effort)?;
+    let couplings = Couplings::new(&plan.step, plan.count(), plan.coupling_scale, plan.far_field, effort)?;
     let mut sum = sums::near(&nodes, &couplings, plan, effort)?;
     if plan.far_field {
         sum = sum.add(&far_field(&nodes, &couplings, plan)?, plan.bits);

@@ -63,8 +63,8 @@
 
 mod cone_nodes;
 mod far_field;
-mod massless;
-mod near_field;
+pub(in crate::routes) mod massless;
+pub(in crate::routes) mod near_field;
 mod nodes;
 mod plan;
 pub mod time_derivatives;
@@ -73,6 +73,7 @@ use super::{Effort, Route, RouteFailure, RouteOutcome, TailProblem};
 use crate::arithmetic::{Bits, Interval, Magnitude, Real, decimal};
 use crate::functions::elementary::{exp, exp_m1, pi, sqrt};
 use nodes::Nodes;
+pub(in crate::routes) use nodes::one_minus_exp;
 use plan::Plan;
 
 /// The spectral route.
@@ -82,7 +83,7 @@ pub struct Spectral;
 pub const SPECTRAL: Spectral = Spectral;
 
 /// Precision in which error bounds are evaluated; they need few digits.
-const BOUND_BITS: Bits = 64;
+pub(in crate::routes) const BOUND_BITS: Bits = 64;
 
 impl Route for Spectral {
     fn name(&self) -> &'static str {
@@ -101,8 +102,9 @@ impl Route for Spectral {
         effort.allow_bits(plan.bits)?;
         let setting = Setting::new(problem, &plan);
         let nodes = Nodes::new(problem, &setting, &plan, effort)?;
-        let near = near_field::sum(&nodes, &plan, effort)?;
-        let mut sum = near;
+        let lattice = plan.lattice();
+        let tangents = near_field::Tangents::new(&lattice, effort)?;
+        let mut sum = near_field::sum(&nodes.all(), &lattice, &tangents, effort)?;
         let mut errors = vec![
             ("discretisation bound", setting.discretisation_error(&plan)),
             ("left cut-off bound", nodes.left_cut_error()),

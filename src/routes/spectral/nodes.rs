@@ -1,6 +1,7 @@
 //! The weights `w(kh)` as balls and as fixed-point integers.
 
 use super::cone_nodes::ConeWeights;
+use super::near_field::Weights;
 use super::plan::Plan;
 use super::{BOUND_BITS, Setting, exp_minus_upper};
 use crate::arithmetic::{Bits, Magnitude, Real};
@@ -69,6 +70,11 @@ impl Nodes {
         Ok(())
     }
 
+    /// All of them for the near sum.
+    pub(super) fn all(&self) -> Weights<'_> {
+        Weights { weights: &self.weights, ratios: &self.ratios, error_units: self.error_units }
+    }
+
     /// Number of nodes.
     pub(super) fn len(&self) -> usize {
         self.weights.len()
@@ -103,7 +109,7 @@ fn weight(setting: &Setting, half: &Real, whole: &Real, plan: &Plan) -> (Real, R
 }
 
 /// `1 - exp(-y)`; where `exp(-y) < 2^-fine`, the ball around one that is as wide as a power of two.
-pub(super) fn one_minus_exp(y: &Real, fine: Bits, bits: Bits) -> Real {
+pub(in crate::routes) fn one_minus_exp(y: &Real, fine: Bits, bits: Bits) -> Real {
     let small = exp_minus_upper(y);
     if small.cmp_value(Magnitude::power_of_two(-i64::from(fine))).is_lt() {
         return Real::from_i64(1).widen(small);

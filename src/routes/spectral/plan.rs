@@ -3,6 +3,7 @@
 //! Nothing here decides containment: a bad choice makes the interval wide, never wrong, because all
 //! error bounds are evaluated afterwards for whatever was chosen.
 
+use super::near_field::Lattice;
 use crate::arithmetic::{Bits, Real};
 use crate::functions::elementary::ln_2;
 use crate::routes::estimate::{bisect, dyadic, log_probability, proper_distance};
@@ -70,6 +71,18 @@ impl Plan {
 }
 
 impl Plan {
+    /// What the near sum has to know.
+    pub(super) fn lattice(&self) -> Lattice {
+        Lattice {
+            step: self.step.clone(),
+            first: self.first,
+            near: self.near,
+            last: self.last,
+            bits: self.bits,
+            scale: self.scale,
+        }
+    }
+
     /// The step as a ball.
     pub(super) fn step_ball(&self, bits: Bits) -> Real {
         let ratio = Real::from_rational(&self.step, bits);

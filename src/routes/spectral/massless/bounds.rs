@@ -12,7 +12,7 @@ use rug::Rational;
 const BITS: u32 = BOUND_BITS;
 
 /// The problem's numbers as balls of low precision.
-pub(super) struct Bounds {
+pub(in crate::routes) struct Bounds {
     time: Real,
     distance: Real,
     /// `m = min(1, t)`
@@ -23,7 +23,7 @@ pub(super) struct Bounds {
 }
 
 impl Bounds {
-    pub(super) fn new(problem: &TailProblem, plan: &Plan) -> Bounds {
+    pub(in crate::routes) fn new(problem: &TailProblem, plan: &Plan) -> Bounds {
         let real = |value: &Rational| Real::from_rational(value, BITS);
         let time = real(&problem.time);
         let late = problem.time > 1;
@@ -43,7 +43,7 @@ impl Bounds {
     }
 
     /// `B_c` of Lemma B; `cosine` is `c`, possibly zero.
-    fn majorant(&self, cosine: &Real) -> Magnitude {
+    pub(in crate::routes) fn majorant(&self, cosine: &Real) -> Magnitude {
         let plain = sqrt(&self.small, BITS).shift(2).abs_upper();
         let rate = cosine.mul(&self.distance, BITS);
         if !rate.certainly_positive() {
@@ -62,14 +62,14 @@ impl Bounds {
     }
 
     /// `Q` of Lemma D.
-    fn weighted_majorant(&self) -> Magnitude {
+    pub(in crate::routes) fn weighted_majorant(&self) -> Magnitude {
         let plain = self.plus_steps(2, 1).add(&ln(&self.quotient, BITS), BITS).mul(&self.small, BITS).abs_upper();
         let far = self.time.div(&self.distance, BITS).mul(&self.plus_steps(2, 1).shift(-1), BITS).abs_upper();
         plain.min(far)
     }
 
     /// Theorem E.
-    pub(super) fn discretisation(&self, plan: &Plan) -> Magnitude {
+    pub(in crate::routes) fn discretisation(&self, plan: &Plan) -> Magnitude {
         if crate::spoil::is_active(crate::spoil::Fault::TrapezoidErrorForgotten) {
             return Magnitude::ZERO;
         }
@@ -88,7 +88,7 @@ impl Bounds {
     }
 
     /// What the nodes below the first one would add.
-    pub(super) fn left_cut(&self, plan: &Plan) -> Magnitude {
+    pub(in crate::routes) fn left_cut(&self, plan: &Plan) -> Magnitude {
         let small = self.time.mul(&self.kappa(plan.first - 1).square(BITS), BITS).mul(&self.plus_steps(1, 2), BITS);
         self.weighted_majorant().mul(small.abs_upper())
     }

@@ -14,7 +14,7 @@ const MAX_NODES: f64 = 60_000.0;
 const MAX_LOGARITHM: f64 = 1e4;
 
 /// All choices for one evaluation.
-pub(super) struct Plan {
+pub(in crate::routes) struct Plan {
     /// Step `h`, a dyadic rational.
     pub step: Rational,
     /// Half-width of the strip of analyticity used; `None` stands for `pi/2`.
@@ -81,7 +81,7 @@ impl Plan {
     }
 
     /// Number of nodes.
-    pub(super) fn count(&self) -> usize {
+    pub(in crate::routes) fn count(&self) -> usize {
         (self.last - self.first + 1) as usize
     }
 }

@@ -16,7 +16,7 @@ use crate::functions::elementary::exp;
 use crate::routes::spectral::near_field::{pack, unpack};
 use crate::routes::spectral::nodes::one_minus_exp;
 use crate::routes::{Effort, RouteFailure, TailProblem};
-use rug::{Float, Integer};
+use rug::{Float, Integer, Rational};
 
 /// Integers with a common unit and a common bound of their errors in units.
 struct FixedList {
@@ -99,35 +99,42 @@ impl Nodes {
 /// `3 m` small units, below one unit for fewer than `2^30` steps. `C = y/(1 + y^2)` has a derivative at most
 /// one in `y`, so with one rounding down it is off by less than two units, and `T = y C` by less
 /// than `2 + 1/2 + 1 < 4`.
-pub(super) struct Couplings {
-    cosh: Vec<Integer>,
+pub(in crate::routes) struct Couplings {
+    /// `C_m`
+    pub(in crate::routes) cosh: Vec<Integer>,
     fermi: Vec<Integer>,
     scale: i64,
 }
 
 impl Couplings {
-    pub(super) fn new(plan: &Plan, effort: &Effort) -> Result<Couplings, RouteFailure> {
-        let fine = plan.coupling_scale + 32;
-        let half_step = Real::from_rational(&plan.step, fine + 32).shift(-1);
+    /// `count` of them for the step `h`; the `T_m` only if they are wanted.
+    pub(in crate::routes) fn new(
+        step: &Rational,
+        count: usize,
+        coupling_scale: u32,
+        with_fermi: bool,
+        effort: &Effort,
+    ) -> Result<Couplings, RouteFailure> {
+        let fine = coupling_scale + 32;
+        let half_step = Real::from_rational(step, fine + 32).shift(-1);
         let (factor, _) = fixed(&exp(&half_step.neg(), fine + 32), i64::from(fine))?;
         let one = Integer::from(1) << (2 * fine);
         let mut power = Integer::from(1) << fine;
-        let count = plan.count();
         let (mut cosh, mut fermi) = (Vec::with_capacity(count), Vec::new());
         for index in 0..count {
             if index % 64 == 0 {
                 effort.check()?;
             }
             let below = Integer::from(power.square_ref()) + &one;
-            let value = (Integer::from(&power << fine) << plan.coupling_scale) / below;
-            if plan.far_field {
+            let value = (Integer::from(&power << fine) << coupling_scale) / below;
+            if with_fermi {
                 fermi.push(Integer::from(&value * &power) >> fine);
             }
             cosh.push(value);
             power *= &factor;
             power >>= fine;
         }
-        Ok(Couplings { cosh, fermi, scale: i64::from(plan.coupling_scale) })
+        Ok(Couplings { cosh, fermi, scale: i64::from(coupling_scale) })
     }
 }
 
