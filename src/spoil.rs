@@ -22,6 +22,12 @@ pub enum Fault {
     LowerBoundRoundedUp = 6,
     /// The power series of the K functions are cut too early, without their tail bound.
     BesselSeriesCut = 7,
+    /// The periodic copies of the lattice route are left out of its error bound.
+    LatticeAliasingForgotten = 40,
+    /// The discretisation error of the contour route is left out.
+    ContourStripForgotten = 41,
+    /// The cut-off error of the contour route is left out.
+    ContourCutForgotten = 42,
 }
 
 #[cfg(feature = "spoil")]

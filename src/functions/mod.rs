@@ -3,3 +3,4 @@
 pub mod bessel_k;
 pub mod complex_elementary;
 pub mod elementary;
+pub mod erfc;

@@ -4,5 +4,7 @@
 //! how probabilities are computed.
 
 pub mod box_packet;
+pub mod gaussian;
 
 pub use box_packet::BoxPacket;
+pub use gaussian::GaussianPacket;

@@ -3,8 +3,11 @@
 //! A [`Route`] gets an exact [`TailProblem`] and a goal in digits and returns an enclosure with the
 //! data that an outsider needs to repeat it. Routes share the arithmetic and nothing else.
 
+pub mod contour;
 mod estimate;
+pub mod gaussian;
 pub mod kernel;
+pub mod lattice;
 pub mod spectral;
 
 use crate::arithmetic::{Bits, Interval};
