@@ -18,8 +18,9 @@ const TOP: f64 = 0.55 * PI;
 /// A rough natural logarithm of `P(x > from)`, never above zero.
 pub(crate) fn log_right_tail(packet: Estimates, from: f64) -> f64 {
     let (s, k, t) = (packet.sigma, packet.momentum, packet.time);
-    let far = (from.abs() + t.abs()).min(1e6 + from * from / (s * s));
-    let reach = ((60.0 + 3.0 * far).sqrt() + 3.0) / s;
+    let far = from.abs() + t.abs();
+    // To where the gaussian is far below the tail, and around the pass at Im p = R/(2 s^2) of a gaussian that has not moved.
+    let reach = ((60.0 + 3.0 * far).sqrt() + 3.0) / s + 2.0 * far / (s * s);
     let (low, high) = ((k - reach).asinh(), (k + reach).asinh());
     let angles: Vec<(f64, f64)> = (0..ROWS).map(|i| (TOP * i as f64 / (ROWS - 1) as f64).sin_cos()).collect();
     let mut best = [f64::NEG_INFINITY; ROWS];

@@ -204,7 +204,7 @@ pub(super) fn refine(
     for _ in 0..PASSES {
         let found = match pass(goal) {
             Ok(found) => found,
-            Err(failure) => return best.ok_or(failure),
+            Err(failure) => return best.filter(|found| found.interval.has_relative_digits(1)).ok_or(failure),
         };
         let interval = found.value.to_interval(found.bits).clamp_non_negative();
         let size = -crate::arithmetic::Magnitude::from_float(interval.lower()).log2_estimate() * LN_2;
