@@ -50,7 +50,7 @@ impl Plan {
             Region::Outside(r) | Region::Within(r) => (Rational::from(-r), r.clone()),
             Region::Between(low, high) => (low.clone(), high.clone()),
             Region::RightOf(x) => (x.clone(), end.max(x.clone() + 1)),
-            Region::LeftOf(x) => (Rational::from(-end).min(x.clone() - 1), x.clone()),
+            Region::LeftOf(x) => ((-end).min(x.clone() - 1), x.clone()),
         };
         let nearest = left.to_f64().max(-right.to_f64());
         let window_rate = best_rate(s, nearest - t);
