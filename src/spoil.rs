@@ -22,11 +22,11 @@ pub enum Fault {
     LowerBoundRoundedUp = 6,
     /// The power series of the K functions are cut too early, without their tail bound.
     BesselSeriesCut = 7,
-    /// The periodic copies of the lattice route are left out of its error bound.
-    LatticeAliasingForgotten = 40,
+    /// The distance of the lattice sum from the integral is left out.
+    LatticeErrorForgotten = 40,
     /// The discretisation error of the contour route is left out.
     ContourStripForgotten = 41,
-    /// The cut-off error of the contour route is left out.
+    /// The sum of the contour route ends too early, without its cut-off error.
     ContourCutForgotten = 42,
 }
 

@@ -54,7 +54,7 @@ fn every_fault_is_noticed() {
     let lattice = || contains_the_truth(Lattice::new, &truths);
     let contour = || contains_the_truth(Contour::new, &truths);
     let checks: [(Fault, &dyn Fn() -> bool); 3] = [
-        (Fault::LatticeAliasingForgotten, &lattice),
+        (Fault::LatticeErrorForgotten, &lattice),
         (Fault::ContourStripForgotten, &contour),
         (Fault::ContourCutForgotten, &contour),
     ];

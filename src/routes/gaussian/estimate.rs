@@ -18,6 +18,10 @@ const TOP: f64 = 0.55 * PI;
 /// A rough natural logarithm of `P(x > from)`, never above zero.
 pub(crate) fn log_right_tail(packet: Estimates, from: f64) -> f64 {
     let (s, k, t) = (packet.sigma, packet.momentum, packet.time);
+    if t == 0.0 {
+        // The normal distribution; without time there is no branch cut in the way.
+        return -from.max(0.0).powi(2) / (2.0 * s * s);
+    }
     let far = from.abs() + t.abs();
     // To where the gaussian is far below the tail, and around the pass at Im p = R/(2 s^2) of a gaussian that has not moved.
     let reach = ((60.0 + 3.0 * far).sqrt() + 3.0) / s + 2.0 * far / (s * s);

@@ -29,21 +29,25 @@
 //! `|Phi(u + iq)|^2 <= (2 s^2/pi)^(1/2) exp(-2 s^2 ((u-k)^2 - q^2) + 2 q |t|)`, whose integral is
 //! `exp(2 q^2 s^2 + 2 q |t|)`. ∎
 //!
-//! **Lemma 3** (aliasing). Without the cut-off `J`, Poisson's summation formula gives
-//! `psi_h(x) = Sum_n exp(i n k L) psi(x - n L)` up to the sign convention in the phases, with the period `L = 2 pi/h`.
-//! The copies `n != 0` have, by lemma 2 and the triangle inequality in `L^2(W)`, the norm
+//! **Lemma 3** (aliasing). Without the cut-off `J`, Poisson's summation formula gives `psi_h = psi + Sum_{n != 0} d_n`
+//! with `|d_n(x)| = |psi(x - n L)|` and the period `L = 2 pi/h`. For `0 <= q <= 1`
 //!
 //! ```text
-//! ||alias|| <= Sum_{n >= 1} [e^(q^2 s^2 - q (nL - x2 - |t|)) + e^(q^2 s^2 - q (nL + x1 - |t|))]
-//!            = e^(q^2 s^2 + q |t|) (e^(-q (L - x2)) + e^(-q (L + x1))) / (1 - e^(-qL)).
+//! 2 Sum_n Int |psi d_n| dx <= 4 e^(2 q^2 s^2 + 2 q |t|) / (e^(qL) - 1),
+//! ||Sum_n d_n||_{L^2(W)}   <= e^(q^2 s^2 + q |t|) (e^(-q (L - x2)) + e^(-q (L + x1))) / (1 - e^(-qL)).
 //! ```
+//!
+//! *Proof.* For `n >= 1`, `|psi(x) psi(x - nL)| = e^(-qnL) |psi(x)| e^(qx) |psi(x - nL)| e^(-q (x - nL))`. By Cauchy and
+//! Schwarz its integral is at most `e^(-qnL)` times the two norms in the proof of lemma 2, `e^(q^2 s^2 + q |t|)` each. The
+//! norm of `d_n` on `W` is at most that of `psi` left of `x2 - nL`, see lemma 2. Both for `n <= -1` alike; sum over `n`. ∎
 //!
 //! **Lemma 4** (cut-off). If `x2 - x1 <= L`, the samples with `|j| > J` make in `L^2(W)` at most what they make on
 //! a whole period, by Parseval's theorem `(h Sum_{|j|>J} |Phi(p_j)|^2)^(1/2)`, and as the gaussian falls
 //! `h Sum_{|j|>J} |Phi|^2 <= 2 (2 s^2/pi)^(1/2) Int_{Jh}^inf exp(-2 s^2 u^2) du <= (2/pi)^(1/2) exp(-2 s^2 J^2 h^2)/(2 s J h)`.
 //!
-//! **Theorem.** With `e` the sum of the two norms and `N = ||psi||_{L^2(W)}`, `|P_h(W) - P(W)| <= 2 N e + e^2`. For `N`
-//! the smaller of one and lemma 2 is used. *Proof.* `psi_h = psi + d` on `W` with `||d|| <= e`; Cauchy-Schwarz. ∎
+//! **Theorem.** With `A` and `a` the two bounds of lemma 3, `c` that of lemma 4 and `N = ||psi||_{L^2(W)}`,
+//! `|P_h(W) - P(W)| <= A + 2 N c + (a + c)^2`. For `N` the smaller of one and lemma 2 is used. *Proof.* Expand
+//! `|psi + d|^2` with `d` the sum of all copies and of what is cut off. ∎
 //!
 //! # Regions
 //!
@@ -83,18 +87,24 @@ impl Lattice {
         let samples = samples::Samples::new(&self.problem, &plan, bits, effort)?;
         let inside = window::integral(&self.problem, &plan, &samples, bits, effort)?;
         let bounds = Bounds::new(&self.problem, &plan);
+        let (product, copies) = bounds.aliasing();
+        let cut_off = bounds.cut_off();
         let errors = [
-            ("aliasing bound, amplitude", bounds.aliasing()),
-            ("cut-off bound, amplitude", bounds.cut_off()),
+            ("aliasing bound A", product),
+            ("aliasing bound a", copies),
+            ("cut-off bound c", cut_off),
             ("probability beyond the window, bound", bounds.remainder()),
         ];
-        let amplitude = errors[0].1.add(errors[1].1);
-        let total = amplitude.mul(bounds.norm().shift(1).add(amplitude));
+        let amplitude = copies.add(cut_off);
+        let mut total = product.add(cut_off.mul(bounds.norm()).shift(1)).add(amplitude.mul(amplitude));
+        if crate::spoil::is_active(crate::spoil::Fault::LatticeErrorForgotten) {
+            total = Magnitude::ZERO;
+        }
         let window = inside.widen(total);
         let value = match self.problem.region() {
             Region::Outside(_) => Real::from_i64(1).sub(&window, bits),
             Region::RightOf(_) | Region::LeftOf(_) => {
-                let rest = Interval::new(rounding::down(BOUND_BITS, 0), errors[2].1.to_float());
+                let rest = Interval::new(rounding::down(BOUND_BITS, 0), errors[3].1.to_float());
                 window.add(&Real::from_interval(&rest, BOUND_BITS), bits)
             }
             Region::Within(_) | Region::Between(..) => window,
@@ -148,22 +158,23 @@ impl<'a> Bounds<'a> {
         exp(&width.sub(&q.mul(&y.sub(&self.time, bits), bits), bits), bits).abs_upper()
     }
 
-    /// Lemma 3; nothing is known when the window is wider than a period.
-    fn aliasing(&self) -> Magnitude {
-        if crate::spoil::is_active(crate::spoil::Fault::LatticeAliasingForgotten) {
-            return Magnitude::ZERO;
-        }
+    /// Lemma 3, `A` and `a`; nothing is known when the window is wider than a period.
+    fn aliasing(&self) -> (Magnitude, Magnitude) {
         let bits = BOUND_BITS;
         let step = Real::from_rational(&self.plan.step, bits);
         let period = pi(bits).shift(1).div(&step, bits);
         if !self.right.sub(&self.left, bits).certainly_less(&period) {
-            return Magnitude::INFINITY;
+            return (Magnitude::INFINITY, Magnitude::INFINITY);
         }
         let rate = &self.plan.rate;
         let first = self.half_line(rate, &period.sub(&self.right, bits));
         let second = self.half_line(rate, &period.add(&self.left, bits));
         let ratio = exp(&Real::from_rational(rate, bits).mul(&period, bits).neg(), bits);
-        first.add(second).div(Real::from_i64(1).sub(&ratio, bits).abs_lower())
+        let rest = Real::from_i64(1).sub(&ratio, bits).abs_lower();
+        // exp(q^2 s^2 + q |t|)
+        let norm = self.half_line(rate, &Real::zero());
+        let product = norm.mul(norm).mul(ratio.abs_upper()).shift(2);
+        (product.div(rest), first.add(second).div(rest))
     }
 
     /// Lemma 4; its condition on the window is checked with lemma 3.

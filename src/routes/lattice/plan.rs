@@ -39,13 +39,11 @@ fn best_rate(sigma: f64, y: f64) -> f64 {
 impl Plan {
     pub(super) fn new(packet: &Estimates, region: &Region, goal: f64) -> Plan {
         let (s, t) = (packet.sigma, packet.time.abs());
-        // Beyond this distance the remainder is below exp(-goal).
-        let rate_for = |goal: f64| (goal.sqrt() / s).min(1.0);
-        let distance_for = |goal: f64| {
-            let q = rate_for(goal);
-            t + goal / q + q * s * s
-        };
-        let end = dyadic(distance_for(0.5 * goal + 2.0), 24);
+        // With this decay rate, copies at the distance `copies` make less than exp(-goal) in lemma 3.
+        let rate = ((0.5 * goal + 2.0).sqrt() / s).min(1.0);
+        let copies = 2.0 * t + (goal + 4.0) / rate + 2.0 * rate * s * s;
+        // Half of that is where a remainder of the probability is as small.
+        let end = dyadic(0.5 * copies, 24);
         let (left, right) = match region {
             Region::Outside(r) | Region::Within(r) => (Rational::from(-r), r.clone()),
             Region::Between(low, high) => (low.clone(), high.clone()),
@@ -57,7 +55,7 @@ impl Plan {
         let norm = (window_rate * window_rate * s * s - window_rate * (nearest - t)).min(0.0);
         let (far, width) = (right.to_f64().max(-left.to_f64()), right.to_f64() - left.to_f64());
         let amplitude = (goal + norm + 3.0).max(2.0);
-        let period = (far + distance_for(amplitude + LN_2)).max(1.001 * width);
+        let period = copies.max(far + 0.5 * copies).max(1.001 * width);
         let step = dyadic(2.0 * PI / (period * 1.000_01), 24);
         let h = step.to_f64();
         let edge = amplitude.sqrt() / s;
@@ -70,7 +68,7 @@ impl Plan {
             right,
             step,
             last: last_estimate.min(1e15) as usize,
-            rate: dyadic(rate_for(amplitude), 24),
+            rate: dyadic(rate, 24),
             window_rate: dyadic(window_rate, 24),
             end_rate: dyadic(best_rate(s, end_distance - t), 24),
             scale: ((goal + prefactor + 4.0) / LN_2 + 4.0).clamp(40.0, 4e9) as u32,
