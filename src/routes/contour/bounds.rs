@@ -20,6 +20,8 @@ pub(super) struct Bounds<'a> {
     /// `sqrt(pi/A_c)` and `G_c/sin c`
     spread: Magnitude,
     weight: Magnitude,
+    /// Whether `R >= 0`, `0 < c`, and all lines lie below `1`, where `cos(2 theta) > 0` means `theta < pi/4`.
+    applies: bool,
 }
 
 impl<'a> Bounds<'a> {
@@ -36,6 +38,7 @@ impl<'a> Bounds<'a> {
             step: Real::from_rational(&plan.step, bits),
             spread: centre.spread(bits),
             weight: centre.peak(bits).div(sine.abs_lower()),
+            applies: tail.from >= 0 && plan.shift > 0 && plan.shift < 1 && plan.above < 1,
             balls,
             mirrored,
         }
@@ -48,7 +51,7 @@ impl<'a> Bounds<'a> {
         }
         let plan = self.plan;
         let ordered = Rational::new() <= plan.below && plan.below < plan.shift && plan.shift < plan.above;
-        if !ordered {
+        if !(self.applies && ordered) {
             return Magnitude::INFINITY;
         }
         let lines = self.line(&plan.above, &plan.touch_above).add(self.line(&plan.below, &plan.touch_below));
@@ -69,6 +72,9 @@ impl<'a> Bounds<'a> {
     pub fn cut_off(&self) -> Magnitude {
         if crate::spoil::is_active(crate::spoil::Fault::ContourCutForgotten) {
             return Magnitude::ZERO;
+        }
+        if !self.applies {
+            return Magnitude::INFINITY;
         }
         let right = self.end(&self.balls, self.plan.last);
         let left = self.end(&self.mirrored, -self.plan.first);

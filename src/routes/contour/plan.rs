@@ -90,7 +90,7 @@ impl Plan {
     }
 
     pub(super) fn count(&self) -> usize {
-        (self.last - self.first + 1) as usize
+        (self.last - self.first + 1).max(1) as usize
     }
 
     pub(super) fn count_estimate(&self) -> f64 {

@@ -153,6 +153,9 @@ impl<'a> Bounds<'a> {
     /// `exp(q^2 s^2 - q (y - |t|))`: the norm of `psi` on either half line beyond `y`, for any `0 <= q <= 1`.
     fn half_line(&self, rate: &Rational, y: &Real) -> Magnitude {
         let bits = BOUND_BITS;
+        if *rate < 0 || *rate > 1 {
+            return Magnitude::INFINITY;
+        }
         let q = Real::from_rational(rate, bits);
         let width = q.mul(&self.sigma, bits).square(bits);
         exp(&width.sub(&q.mul(&y.sub(&self.time, bits), bits), bits), bits).abs_upper()
