@@ -3,6 +3,9 @@
 //! Absolute times say little between machines: compare the routes, the digits and `one exponential` of one run.
 //! `benches/ratio_table.py` sets them beside other programs.
 
+#![allow(missing_docs)] // the macros of the benchmark library write functions without documentation
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
+
 use coneproof::arithmetic::{ExactInput, Real};
 use coneproof::functions::elementary::exp;
 use coneproof::routes::{Effort, Route, TailProblem, kernel::KERNEL, spectral::SPECTRAL};

@@ -1,4 +1,4 @@
-//! Prints one tail by one route and the time it took: `tail_timing kernel|spectral A T DIGITS [D]`.
+//! Prints one tail by one route and the time it took: `tail_timing kernel|spectral A T DIGITS [D] [massless]`.
 use coneproof::arithmetic::{ExactInput, decimal};
 use coneproof::routes::{Effort, Route, TailProblem, kernel::KERNEL, spectral::SPECTRAL};
 use std::time::Instant;

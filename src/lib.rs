@@ -6,6 +6,7 @@
 
 pub mod arithmetic;
 pub mod certificate;
+pub mod claims;
 pub mod command;
 pub mod error;
 pub mod functions;

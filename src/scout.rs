@@ -119,8 +119,11 @@ impl Doubles {
         if in_range(doubles.half_width) && in_range(doubles.time) && (at_cone || in_range(doubles.distance)) {
             return Ok(doubles);
         }
-        let was = format!("mass * half-width = {:.3e}, mass * time = {:.3e}", doubles.half_width, doubles.time);
-        Err(Error::bad_input("scout", was, "a scout works in double precision: ask without --scout"))
+        let (a, t, d) = (doubles.half_width, doubles.time, doubles.distance);
+        let was = format!("ratios m a = {a:.1e}, m t = {t:.1e}, m (R - a - t) = {d:.1e}");
+        let wanted =
+            "a scout needs them between 1e-60 and 1e60 (lengths in units of a for mass 0): ask without --scout";
+        Err(Error::bad_input("scout", was, wanted))
     }
 
     /// `phi(i kappa) exp(-kappa a)` of the box; complex, as a moving packet's would be.
@@ -221,8 +224,8 @@ mod tests {
     fn agrees_with_values_from_the_definition() {
         // Sources: references/box_tail_from_definition.json.
         let cases = [
-            ("1", "1", "1", None, 0.021375190842329457),
-            ("1", "1", "1", Some("12"), 1.0862e-14),
+            ("1", "1", "1", None, 0.021_375_190_842_329_46),
+            ("1", "1", "1", Some("12"), 1.085_950_197_488_84e-14),
             ("1", "1", "1", Some("20"), 2.4987e-22),
             ("0.1", "1", "1", None, 0.0943074606714377),
             ("0.1", "1", "100", None, 0.005050638261886189),
@@ -255,7 +258,7 @@ mod tests {
     #[test]
     fn decimals_of_every_size() {
         let show = |log10: f64| Scout { log10: Some(log10), seconds: 0.0 }.decimal();
-        assert_eq!(show(0.021375190842329457f64.log10()), "0.0213752");
+        assert_eq!(show(0.021_375_190_842_329_46_f64.log10()), "0.0213752");
         assert_eq!(show(-100_000.0), "1.00000e-100000");
         assert_eq!(show(1.0862e-14f64.log10()), "1.08620e-14");
         assert_eq!(Scout { log10: None, seconds: 0.0 }.decimal(), "0");

@@ -22,6 +22,8 @@ pub enum Fault {
     LowerBoundRoundedUp = 6,
     /// The power series of the K functions are cut too early, without their tail bound.
     BesselSeriesCut = 7,
+    /// The power series of the dilogarithm is cut too early, without its tail bound.
+    DilogarithmSeriesCut = 8,
     /// The distance of the lattice sum from the integral is left out.
     LatticeErrorForgotten = 40,
     /// The discretisation error of the contour route is left out.

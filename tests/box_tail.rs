@@ -4,6 +4,8 @@
 //! the definition of the evolution and shares no formula with the program; `references/check-values.json` names its
 //! methods value by value.
 
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
+
 use coneproof::arithmetic::{ExactInput, Interval};
 use coneproof::packets::BoxPacket;
 use coneproof::quantities::tail::{RouteChoice, Side, Status, TailRequest};
@@ -102,7 +104,7 @@ fn massless_late_limit() {
         let mut request = request("1", "0", &format!("1e{power}"), None);
         request.digits = 20;
         let found = interval(&request);
-        let gap = Rational::from(&sixth - found.upper().to_rational().unwrap());
+        let gap = &sixth - found.upper().to_rational().unwrap();
         assert!(gap > 0, "the limit is approached from below");
         // The distance from the limit is of the order a/t ln(t/a): common practice, no source.
         assert!(gap < Rational::from((power, Integer::from(10).pow_ref_(power))));

@@ -1,5 +1,7 @@
 //! The two routes on random inputs over the whole range: their intervals meet and are as narrow as asked.
 
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
+
 use coneproof::arithmetic::Interval;
 use coneproof::routes::{Effort, Route, RouteFailure, TailProblem, kernel::KERNEL, spectral::SPECTRAL};
 use proptest::prelude::*;

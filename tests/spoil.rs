@@ -2,6 +2,7 @@
 //!
 //! Run with `cargo test --features spoil --test spoil`. One fault at a time, in one test, because the switch is global.
 #![cfg(feature = "spoil")]
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
 
 use coneproof::arithmetic::{ExactInput, Interval, Real, decimal};
 use coneproof::routes::{Effort, Route, TailProblem, kernel::KERNEL, spectral::SPECTRAL};

@@ -4,9 +4,10 @@
 //! `mpfr_get_str`), so the only work left is the layout. Numbers with a decimal exponent between
 //! -5 and 20 are printed plainly, others in the form `1.25e-40`.
 
-use super::Interval;
+use super::{Bits, Interval, rounding};
+use rug::Float;
 use rug::float::Round;
-use rug::{Float, Integer, Rational};
+use std::cmp::Ordering;
 
 /// The largest decimal of `digits` significant digits that is not above `value`.
 pub fn lower_decimal(value: &Float, digits: u32) -> String {
@@ -89,22 +90,77 @@ fn try_digits(interval: &Interval, digits: u32) -> Option<GuaranteedDecimal> {
     let (negative, text, exponent) = middle.to_sign_string_exp_round(10, Some(digits as usize), Round::Nearest);
     let exponent = i64::from(exponent?) - 1;
     let unit_exponent = exponent - i64::from(digits) + 1;
-    let mut mantissa = Rational::from(Integer::parse(&text).ok().map(Integer::from)?);
-    if negative {
-        mantissa = -mantissa;
+    let sign = if negative { "-" } else { "" };
+    let bits = bits.max(digits.saturating_mul(4)).saturating_add(64);
+    let (below, above) = directed_values(&format!("{sign}{text}e{unit_exponent}"), bits)?;
+    let (unit, _) = directed_values(&format!("1e{unit_exponent}"), bits)?;
+    // Directed rounding makes the differences larger and the unit smaller than they are.
+    let fits =
+        rounding::up(bits, interval.upper() - &below) < unit && rounding::up(bits, &above - interval.lower()) < unit;
+    fits.then(|| GuaranteedDecimal { text: layout(negative, &text, exponent), digits })
+}
+
+/// The decimal as binary numbers not above and not below it.
+fn directed_values(text: &str, bits: Bits) -> Option<(Float, Float)> {
+    let read = |text| Float::parse(text).ok();
+    Some((rounding::down(bits, read(text)?), rounding::up(bits, read(text)?)))
+}
+
+/// Compares two decimals exactly as written, at any exponent; `None` unless both are of the form
+/// `[-]digits[.digits][e[-]digits]`.
+pub fn compare(left: &str, right: &str) -> Option<Ordering> {
+    let (left, right) = (Written::read(left)?, Written::read(right)?);
+    Some(match (left.sign(), right.sign()) {
+        (-1, -1) => right.compare_size(&left),
+        (1, 1) => left.compare_size(&right),
+        (left, right) => left.cmp(&right),
+    })
+}
+
+/// A decimal taken apart: `+-0.DIGITS * 10^exponent`, without zeros at either end of the digits.
+struct Written {
+    negative: bool,
+    digits: String,
+    exponent: i64,
+}
+
+impl Written {
+    fn read(text: &str) -> Option<Written> {
+        let (negative, unsigned) = text.strip_prefix('-').map_or((false, text), |rest| (true, rest));
+        let (body, exponent) = unsigned.split_once('e').unwrap_or((unsigned, "0"));
+        let (whole, fraction) = body.split_once('.').unwrap_or((body, "0"));
+        let digits_only = |part: &str| !part.is_empty() && part.bytes().all(|byte| byte.is_ascii_digit());
+        let plain = exponent.strip_prefix('-').unwrap_or(exponent);
+        if ![whole, fraction, plain].into_iter().all(digits_only) {
+            return None;
+        }
+        let all = format!("{whole}{fraction}");
+        let digits = all.trim_start_matches('0');
+        let leading = all.len() - digits.len();
+        let point = i64::try_from(whole.len()).ok()?.checked_sub(i64::try_from(leading).ok()?)?;
+        let exponent = exponent.parse::<i64>().ok()?.checked_add(point)?;
+        Some(Written { negative, digits: digits.trim_end_matches('0').to_owned(), exponent })
     }
-    // Compare in units of the last digit: |v / unit - mantissa| < 1 at both ends.
-    let power = Integer::from(Integer::u_pow_u(10, u32::try_from(unit_exponent.unsigned_abs()).ok()?));
-    let unit = if unit_exponent >= 0 { Rational::from(power) } else { Rational::from((Integer::from(1), power)) };
-    let fits = |end: &Float| Some((end.to_rational()? / &unit - &mantissa).abs() < 1);
-    (fits(interval.lower())? && fits(interval.upper())?)
-        .then(|| GuaranteedDecimal { text: layout(negative, &text, exponent), digits })
+
+    fn sign(&self) -> i32 {
+        match (self.digits.is_empty(), self.negative) {
+            (true, _) => 0,
+            (false, true) => -1,
+            (false, false) => 1,
+        }
+    }
+
+    /// For numbers that are not zero.
+    fn compare_size(&self, other: &Written) -> Ordering {
+        self.exponent.cmp(&other.exponent).then_with(|| self.digits.cmp(&other.digits))
+    }
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
     use crate::arithmetic::ExactInput;
+    use rug::{Integer, Rational};
 
     fn read(text: &str) -> Rational {
         text.parse::<ExactInput>().unwrap().lower().clone()
@@ -125,7 +181,22 @@ mod tests {
         }
     }
 
+    #[test]
+    fn comparison_reads_any_exponent() {
+        assert_eq!(compare("1e-99999999999", "2e-99999999999"), Some(Ordering::Less));
+        assert_eq!(compare("-1e5", "-100000.0"), Some(Ordering::Equal));
+        assert_eq!(compare("0.00", "-0"), Some(Ordering::Equal));
+        for text in ["", "1.", ".5", "1e", "+1", "inf", "1e+5", "1 ", "0x1", "1e99999999999999999999"] {
+            assert_eq!(compare(text, "1"), None, "{text:?}");
+        }
+    }
+
     proptest::proptest! {
+        #[test]
+        fn comparison_is_that_of_the_numbers(a in "-?[0-9]{1,4}(\\.[0-9]{1,4})?(e-?[0-9]{1,2})?", b in "-?[0-9]{1,4}(\\.[0-9]{1,4})?(e-?[0-9]{1,2})?") {
+            proptest::prop_assert_eq!(compare(&a, &b), Some(read(&a).cmp(&read(&b))));
+        }
+
         #[test]
         fn printed_bounds_reparse_to_a_superset(n in 1i64.., d in 1i64.., e in -400i32..400, digits in 1u32..40) {
             let value = Rational::from((n, d)) * if e >= 0 { Rational::from(1) << e as u32 } else { Rational::from(1) >> (-e) as u32 };

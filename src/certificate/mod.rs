@@ -24,12 +24,15 @@ mod file;
 
 pub use file::check_writable;
 
-use crate::arithmetic::{ExactInput, decimal};
+use crate::arithmetic::decimal;
 use crate::error::Error;
-use crate::quantities::tail::{RouteReport, TailRequest, TailResult};
-use crate::report::{CAUTION, DecimalBounds, Inputs, PROGRAM, TailReport, VERSION};
+use crate::quantities::question::{Inputs, Question};
+use crate::quantities::tail::{RouteReport, TailResult};
+use crate::report::{CAUTION, DecimalBounds, PROGRAM, TailReport, VERSION};
 use serde::{Deserialize, Serialize};
+use serde_json::Value;
 use sha2::{Digest, Sha256};
+use std::cmp::Ordering;
 
 /// The name of the format.
 pub const FORMAT: &str = "coneproof-certificate";
@@ -72,6 +75,9 @@ pub struct Certificate {
     pub value: Option<String>,
     /// Relative digits reached: `upper - lower <= 10^-digits * lower`.
     pub digits: u32,
+    /// Where the value is taken, for an extremum or a crossing.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub at: Option<Bounds>,
     /// `certified` or `fewer digits`.
     pub status: String,
     /// What each route found.
@@ -106,6 +112,16 @@ pub struct RouteCertificate {
     pub witness: Vec<Witness>,
 }
 
+/// A pair of decimals that bound a number.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Bounds {
+    /// Decimal not above the number.
+    pub lower: String,
+    /// Decimal not below the number.
+    pub upper: String,
+}
+
 /// One named number of a computation.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
@@ -121,8 +137,8 @@ impl Certificate {
     ///
     /// # Errors
     /// [`Error::Internal`] if the content cannot be written as JSON, which its types exclude.
-    pub fn new(request: &TailRequest, result: &TailResult) -> Result<Certificate, Error> {
-        let report = TailReport::new(request, result);
+    pub fn new(question: &dyn Question, result: &TailResult) -> Result<Certificate, Error> {
+        let report = TailReport::new(question, result);
         let mut certificate = Certificate {
             format: FORMAT.to_owned(),
             format_version: FORMAT_VERSION,
@@ -134,8 +150,9 @@ impl Certificate {
             upper: report.bounds.upper,
             value: report.value.map(|value: decimal::GuaranteedDecimal| value.text),
             digits: report.digits,
+            at: report.at.map(|at| Bounds { lower: at.lower, upper: at.upper }),
             status: report.status.name().to_owned(),
-            routes: result.routes.iter().map(|route| RouteCertificate::new(route, request.digits)).collect(),
+            routes: result.routes.iter().map(|route| RouteCertificate::new(route, question.digits())).collect(),
             notes: report.notes,
             caution: CAUTION.to_owned(),
             sha256: String::new(),
@@ -149,12 +166,7 @@ impl Certificate {
     /// # Errors
     /// As for [`Certificate::new`].
     pub fn canonical_content(&self) -> Result<String, Error> {
-        let mut document = serde_json::to_value(self).map_err(internal)?;
-        if let Some(members) = document.as_object_mut() {
-            members.shift_remove("sha256");
-        }
-        document.sort_all_objects();
-        serde_json::to_string(&document).map_err(internal)
+        canonical(serde_json::to_value(self).map_err(internal)?)
     }
 
     /// SHA-256 of the canonical content in lower-case hexadecimal.
@@ -162,8 +174,7 @@ impl Certificate {
     /// # Errors
     /// As for [`Certificate::new`].
     pub fn content_hash(&self) -> Result<String, Error> {
-        let digest = Sha256::digest(self.canonical_content()?.as_bytes());
-        Ok(digest.iter().map(|byte| format!("{byte:02x}")).collect())
+        Ok(hash(&self.canonical_content()?))
     }
 
     /// The document as indented JSON.
@@ -181,17 +192,19 @@ impl Certificate {
     /// [`Error::BadInput`] that says what is wrong with the document.
     pub fn from_json(text: &str) -> Result<Certificate, Error> {
         let refuse = |was: &str, wanted: &str| Err(Error::bad_input("certificate", was, wanted));
-        let certificate: Certificate = match serde_json::from_str(text) {
-            Ok(certificate) => certificate,
-            Err(error) => return refuse(&error.to_string(), "give a certificate written by coneproof, unchanged"),
+        let unreadable = |error: serde_json::Error| {
+            Error::bad_input("certificate", error, "give one written by coneproof, unchanged")
         };
+        let certificate: Certificate = serde_json::from_str(text).map_err(unreadable)?;
+        // The document itself, since a member left out would be filled in above.
+        let document: Value = serde_json::from_str(text).map_err(unreadable)?;
         if certificate.format != FORMAT {
             return refuse(&certificate.format, "the format must be coneproof-certificate");
         }
         if certificate.format_version != FORMAT_VERSION {
             return refuse(&certificate.format_version.to_string(), "the format_version must be 1");
         }
-        if certificate.content_hash()? != certificate.sha256 {
+        if hash(&canonical(document)?) != certificate.sha256 {
             return refuse(&certificate.sha256, "the hash must be that of the content, which has been changed");
         }
         certificate.check_order()?;
@@ -202,9 +215,14 @@ impl Certificate {
     fn check_order(&self) -> Result<(), Error> {
         let pairs = self.routes.iter().filter_map(|route| route.lower.as_ref().zip(route.upper.as_ref()));
         for (lower, upper) in std::iter::once((&self.lower, &self.upper)).chain(pairs) {
-            if format!("[{lower}, {upper}]").parse::<ExactInput>().is_err() {
+            let order = decimal::compare(lower, upper);
+            if order.is_none_or(Ordering::is_gt) || lower.starts_with('-') {
                 let was = format!("{lower} .. {upper}");
-                return Err(Error::bad_input("certificate", was, "bounds must be decimals, the lower one first"));
+                return Err(Error::bad_input(
+                    "certificate",
+                    was,
+                    "bounds must be decimals from 0 up, the lower one first",
+                ));
             }
         }
         Ok(())
@@ -230,6 +248,19 @@ impl RouteCertificate {
                 .collect(),
         }
     }
+}
+
+/// The document without its hash, in the canonical form.
+fn canonical(mut document: Value) -> Result<String, Error> {
+    if let Some(members) = document.as_object_mut() {
+        members.shift_remove("sha256");
+    }
+    document.sort_all_objects();
+    serde_json::to_string(&document).map_err(internal)
+}
+
+fn hash(content: &str) -> String {
+    Sha256::digest(content.as_bytes()).iter().map(|byte| format!("{byte:02x}")).collect()
 }
 
 fn internal(error: serde_json::Error) -> Error {

@@ -2,12 +2,12 @@
 
 use crate::arithmetic::{Bits, ExactInput};
 use crate::error::Error;
-use crate::quantities::tail::MAX_DIGITS;
+use crate::quantities::tail::{MAX_DIGITS, RouteChoice};
 use rug::Rational;
 use std::time::Duration;
 
 /// Largest limit on bits that is accepted.
-const MAX_BITS: u32 = 100_000_000;
+const MAX_BITS: u32 = 20_000_000;
 /// Longest time limit in seconds that is accepted, about 30 years.
 const MAX_SECONDS: u32 = 1_000_000_000;
 
@@ -32,6 +32,16 @@ pub(super) fn beyond(text: Option<&str>) -> Result<Option<ExactInput>, Error> {
             let wanted = "give a distance from the origin, such as 12 or 2.5, or the word cone for half-width + |time|";
             Error::bad_input("beyond", text, wanted)
         }),
+    }
+}
+
+/// Which routes of the box run.
+pub(super) fn route(text: &str) -> Result<RouteChoice, Error> {
+    match text {
+        "kernel" => Ok(RouteChoice::Kernel),
+        "spectral" => Ok(RouteChoice::Spectral),
+        "both" => Ok(RouteChoice::Both),
+        _ => Err(Error::bad_input("route", text, "give kernel, spectral or both")),
     }
 }
 

@@ -1,44 +1,64 @@
 //! The command line, usable as a function: [`run`].
 //!
-//! Each quantity is a module with a set of options shared by its packets ([`tail`]); each packet is
-//! one file below it with the options of its own. Values are read as text and turned into numbers
+//! Each command is a module. That of a quantity has the options shared by its packets ([`tail`]);
+//! each packet is one file below it with the options of its own. Values are read as text and turned into numbers
 //! in [`fields`], so that every refusal names the field, what it was and what would be right;
 //! [`usage`] says the same of what `clap` refuses.
 
+/// For the help of every command.
+macro_rules! exit_codes {
+    () => {
+        "Exit codes:
+  0  certified to the digits asked; or a scout's estimate, a schema, this help
+  2  bad input, or a file that cannot be written: one sentence says what and why
+  3  fewer digits than asked: the interval printed is proven, but wider
+  4  internal fault: the program contradicted itself and gives no answer"
+    };
+}
+
 mod fields;
+mod peak;
+mod schema;
 mod tail;
 mod usage;
 
 use crate::error::{EXIT_CERTIFIED, Error};
 use crate::report::json;
 use clap::{Parser, Subcommand};
+use std::any::Any;
 use std::ffi::OsString;
 use std::io::{self, Write};
+use std::panic::{self, AssertUnwindSafe};
 
 /// Certified probabilities of finding a free relativistic particle beyond its light cone.
 #[derive(Parser)]
 #[command(name = "coneproof", version, after_help = AFTER_HELP)]
 struct CommandLine {
     #[command(subcommand)]
-    quantity: Quantity,
+    task: Task,
 }
 
 #[derive(Subcommand)]
-enum Quantity {
+enum Task {
     /// The probability of finding a packet outside its light cone
     Tail(tail::TailCommand),
+    /// The largest probability over all times, with a proof that none is larger
+    Peak(peak::PeakCommand),
+    /// Print the JSON Schema of something that this program writes
+    Schema(schema::SchemaCommand),
 }
 
-const AFTER_HELP: &str = "\
+const AFTER_HELP: &str = concat!(
+    "\
 Examples:
   coneproof tail box --half-width 1 --mass 1 --time 1 --digits 30
   coneproof tail box --help
+  coneproof peak box --half-width 1/2 --over time
+  coneproof schema certificate
 
-Exit codes:
-  0  certified to the digits asked, or a scout's estimate
-  2  bad input, or a file that cannot be written: one sentence says what and why
-  3  fewer digits than asked: the interval printed is proven, but wider
-  4  internal fault: the program contradicted itself and gives no answer";
+",
+    exit_codes!()
+);
 
 /// What a command has to say.
 struct Answer {
@@ -53,7 +73,8 @@ struct Answer {
 /// Runs one command line, the program's name first, and returns the exit code.
 ///
 /// Answers go to `out`; refusals go to `err` as one sentence, and to `out` as a JSON object as well
-/// if `--format json` was given. A reader that closes `out` early is no error.
+/// if `--format json` was given. A reader that closes `out` early is no error. A panic below, which
+/// would be a defect, is reported as an internal fault.
 ///
 /// ```
 /// let (mut out, mut err) = (Vec::new(), Vec::new());
@@ -68,7 +89,8 @@ where
 {
     let args: Vec<OsString> = args.into_iter().map(Into::into).collect();
     let answer = match CommandLine::try_parse_from(&args) {
-        Ok(CommandLine { quantity: Quantity::Tail(tail) }) => tail.answer(),
+        Ok(CommandLine { task }) => panic::catch_unwind(AssertUnwindSafe(|| task.answer()))
+            .unwrap_or_else(|payload| Err(fault(payload.as_ref()))),
         Err(refusal) => usage::answer(refusal, &args),
     };
     match answer {
@@ -81,6 +103,23 @@ where
             error.exit_code()
         }
     }
+}
+
+impl Task {
+    fn answer(&self) -> Result<Answer, Error> {
+        match self {
+            Task::Tail(tail) => tail.answer(),
+            Task::Peak(peak) => peak.answer(),
+            Task::Schema(schema) => Ok(schema.answer()),
+        }
+    }
+}
+
+/// A panic as an internal fault.
+fn fault(payload: &(dyn Any + Send)) -> Error {
+    let text = payload.downcast_ref::<&str>().map(|text| (*text).to_owned());
+    let text = text.or_else(|| payload.downcast_ref::<String>().cloned());
+    Error::Internal { found: text.unwrap_or_else(|| "a panic without a message".to_owned()) }
 }
 
 fn deliver(answer: &Answer, out: &mut dyn Write, err: &mut dyn Write) -> u8 {

@@ -2,8 +2,8 @@
 
 use super::{Answer, CommandLine};
 use crate::error::Error;
-use clap::CommandFactory;
 use clap::error::{ContextKind, ContextValue, ErrorKind};
+use clap::{Command, CommandFactory};
 use std::ffi::OsString;
 
 /// Whether the arguments ask for JSON, even if they cannot be used otherwise.
@@ -23,10 +23,17 @@ pub(super) fn answer(refusal: clap::Error, args: &[OsString]) -> Result<Answer, 
 fn sentence(refusal: &clap::Error, args: &[OsString]) -> Error {
     let named = |kind| context(refusal, kind).unwrap_or_default();
     let argument = named(ContextKind::InvalidArg);
+    let reached = Reached::by(args);
     match refusal.kind() {
-        ErrorKind::InvalidSubcommand => unknown_word(&named(ContextKind::InvalidSubcommand), args),
-        ErrorKind::MissingSubcommand | ErrorKind::DisplayHelpOnMissingArgumentOrSubcommand => missing_word(args),
-        ErrorKind::UnknownArgument => unknown_argument(&argument, &named(ContextKind::SuggestedArg), args),
+        ErrorKind::InvalidSubcommand => {
+            let wanted = format!("known are: {}", reached.choices());
+            Error::bad_input(reached.field(), named(ContextKind::InvalidSubcommand), &wanted)
+        }
+        ErrorKind::MissingSubcommand | ErrorKind::DisplayHelpOnMissingArgumentOrSubcommand => {
+            let wanted = format!("name one of: {}; {}", reached.choices(), reached.help());
+            Error::Missing { field: reached.field().to_owned(), wanted }
+        }
+        ErrorKind::UnknownArgument => unknown_argument(&argument, &named(ContextKind::SuggestedArg), args, &reached),
         ErrorKind::InvalidValue => {
             unknown_value(&argument, &named(ContextKind::InvalidValue), &named(ContextKind::ValidValue))
         }
@@ -34,45 +41,66 @@ fn sentence(refusal: &clap::Error, args: &[OsString]) -> Error {
             Error::bad_input(&field(&argument), named(ContextKind::InvalidValue), "it takes no value")
         }
         ErrorKind::ArgumentConflict => conflict(&argument, &named(ContextKind::PriorArg)),
-        ErrorKind::InvalidUtf8 => {
-            Error::bad_input("arguments", "bytes that are not UTF-8", "write them as ordinary text")
-        }
+        ErrorKind::InvalidUtf8 => not_text(args),
         _ => {
             let rendered = refusal.render().to_string();
             let first = rendered.lines().next().unwrap_or_default().trim_start_matches("error: ");
-            Error::bad_input("arguments", first, HELP)
+            Error::bad_input("arguments", first, &reached.help())
         }
     }
 }
 
-const HELP: &str = "coneproof tail box --help shows the options";
+/// The command that the first words name, as far as they are known.
+struct Reached {
+    command: Command,
+    words: Vec<String>,
+}
 
-/// A quantity or packet that does not exist: the first word is the quantity.
-fn unknown_word(word: &str, args: &[OsString]) -> Error {
-    if args.get(1).is_some_and(|first| first == word) {
-        return Error::bad_input("quantity", word, &format!("known are: {}", subcommands(&CommandLine::command())));
+impl Reached {
+    fn by(args: &[OsString]) -> Reached {
+        let mut reached = Reached { command: CommandLine::command(), words: vec!["coneproof".to_owned()] };
+        for word in args.iter().skip(1).map_while(|arg| arg.to_str()) {
+            let Some(next) = reached.command.find_subcommand(word).cloned() else { break };
+            reached = Reached { command: next, words: reached.words };
+            reached.words.push(word.to_owned());
+        }
+        reached
     }
-    Error::bad_input("packet", word, &format!("known are: {}", packets()))
+
+    /// What the next word would name.
+    fn field(&self) -> &'static str {
+        if self.words.len() == 1 { "command" } else { "packet" }
+    }
+
+    fn choices(&self) -> String {
+        let names = self.command.get_subcommands().map(Command::get_name).filter(|name| *name != "help");
+        names.collect::<Vec<_>>().join(", ")
+    }
+
+    fn options(&self) -> String {
+        let options = self.command.get_arguments().filter_map(|arg| arg.get_long()).filter(|name| *name != "help");
+        options.map(|name| format!("--{name}")).collect::<Vec<_>>().join(", ")
+    }
+
+    fn help(&self) -> String {
+        format!("{} --help shows what it takes", self.words.join(" "))
+    }
 }
 
-fn missing_word(args: &[OsString]) -> Error {
-    let (field, known) = match args.len() {
-        0 | 1 => ("quantity", subcommands(&CommandLine::command())),
-        _ => ("packet", packets()),
-    };
-    Error::Missing { field: field.to_owned(), wanted: format!("name one of: {known}; {HELP}") }
-}
-
-fn unknown_argument(argument: &str, suggested: &str, args: &[OsString]) -> Error {
+fn unknown_argument(argument: &str, suggested: &str, args: &[OsString], reached: &Reached) -> Error {
     if argument.starts_with('-') {
-        let hint = if suggested.is_empty() { String::new() } else { format!("did you mean {suggested}? ") };
-        return Error::bad_input("option", argument, &format!("{hint}{HELP}"));
+        let (name, options) = (reached.words.join(" "), reached.options());
+        // A suggestion is worth its words only for a slip of the keyboard.
+        let close = argument.len() > 3 && suggested.starts_with(argument.get(..4).unwrap_or(argument));
+        let hint = if close { format!("did you mean {suggested}? ") } else { String::new() };
+        return Error::bad_input("option", argument, &format!("{hint}{name} takes {options}"));
     }
     // In `--time --digits 5` the word `--digits` was taken as the time, and 5 is left over.
     let is_option = |arg: &OsString| arg.as_encoded_bytes().starts_with(b"--");
     let robbed = args.windows(3).find(|w| is_option(&w[0]) && is_option(&w[1]) && w[2] == argument);
     match robbed.and_then(|window| window[0].to_str()) {
         Some(option) => Error::Missing { field: field(option), wanted: format!("give a value after {option}") },
+        None if reached.options().is_empty() => Error::bad_input("arguments", argument, &reached.help()),
         None => Error::bad_input("arguments", argument, "a value follows its option, such as --time 1"),
     }
 }
@@ -93,18 +121,34 @@ fn conflict(argument: &str, prior: &str) -> Error {
     Error::bad_input(&field, format!("--{field}"), &format!("it does not go together with {prior}"))
 }
 
-/// `--half-width <A>` is the field `half-width`.
+/// Bytes that are not UTF-8, with the option that they follow.
+fn not_text(args: &[OsString]) -> Error {
+    let mut option = "arguments".to_owned();
+    for arg in args.iter().skip(1) {
+        match arg.to_str() {
+            Some(text) if text.starts_with("--") => option = field(text),
+            Some(_) => {}
+            // The path of a certificate may be any bytes.
+            None if option == "certificate" => {}
+            None => {
+                let bytes = arg.to_string_lossy();
+                let (name, value) = bytes.split_once('=').unwrap_or(("", &bytes));
+                let option = if name.starts_with("--") { field(name) } else { option };
+                return Error::bad_input(&option, value, "these bytes are not UTF-8: write it as ordinary text");
+            }
+        }
+    }
+    Error::bad_input("arguments", "bytes that are not UTF-8", "write them as ordinary text")
+}
+
+/// `--half-width <A>` is the field `half-width`, `[NAME]` the field `name`.
 fn field(argument: &str) -> String {
-    argument.split_whitespace().next().unwrap_or_default().trim_start_matches('-').to_owned()
-}
-
-fn packets() -> String {
-    CommandLine::command().find_subcommand("tail").map(subcommands).unwrap_or_default()
-}
-
-fn subcommands(command: &clap::Command) -> String {
-    let names: Vec<&str> = command.get_subcommands().map(clap::Command::get_name).filter(|n| *n != "help").collect();
-    names.join(", ")
+    let word = argument.split_whitespace().next().unwrap_or_default();
+    let word = word.split('=').next().unwrap_or_default();
+    if word.starts_with('-') {
+        return word.trim_start_matches('-').to_owned();
+    }
+    word.trim_matches(|character| "[]<>".contains(character)).to_lowercase()
 }
 
 fn context(refusal: &clap::Error, kind: ContextKind) -> Option<String> {

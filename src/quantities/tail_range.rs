@@ -22,19 +22,22 @@
 //! `m t >= 1`, as `d s/dt = 0` only at `t = eta / sinh eta <= 1`. ∎
 //!
 //! The box of `(a, t)` is cut into pieces and the pieces' bounds are joined, so that the factors
-//! of Lemma 2 cost little width.
+//! of Lemma 2 cost little width. The reduction is carried out for the intersections of the routes'
+//! intervals and for each route by itself, so that what is shown for a route is an enclosure that
+//! rests on this route alone.
 
-use super::tail::{RouteReport, Status, TailRequest, TailResult, run_routes, scale};
-use crate::arithmetic::{ExactInput, Interval, Real, rounding};
+use super::tail::{RouteReport, TailRequest, run_routes, scale, without_routes};
+use crate::arithmetic::{Bits, ExactInput, Interval, Real, decimal, rounding};
 use crate::error::Error;
 use crate::functions::elementary;
 use crate::routes::Effort;
 use rug::{Float, Rational};
+use std::collections::BTreeMap;
 
 /// Pieces into which an interval of times or half-widths at the cone is cut.
 const PIECES: u32 = 12;
-/// Digits of the exact problems that bound an interval problem.
-const CORNER_DIGITS: u32 = 18;
+/// Digits of the exact problems in the first round; few intervals deserve more.
+const FIRST_DIGITS: u32 = 18;
 
 /// The smallest and largest absolute value of an input.
 pub(super) fn absolute(input: &ExactInput) -> (Rational, Rational) {
@@ -52,41 +55,32 @@ pub(super) fn absolute(input: &ExactInput) -> (Rational, Rational) {
     (smallest, largest)
 }
 
-/// Certifies a valid request, for both sides together.
-pub(super) fn certify(request: &TailRequest) -> Result<TailResult, Error> {
+/// Encloses the answer to a valid request, for both sides together, and says what each route found.
+pub(super) fn enclose(request: &TailRequest) -> Result<(Interval, Vec<RouteReport>), Error> {
     let effort = request.effort();
-    let points = request.packet.half_width().is_point() && request.mass.is_point() && request.time.is_point();
-    let (interval, routes, notes) = if points && request.beyond.as_ref().is_none_or(ExactInput::is_point) {
-        let (interval, routes) = exact(request, &effort)?;
-        (interval, routes, Vec::new())
-    } else {
-        let (interval, routes) = match &request.beyond {
-            Some(region) => fixed_region(request, region, &effort)?,
-            None => at_the_cone(request, &effort)?,
-        };
-        (interval, routes, vec!["the width of the inputs limits the digits".to_owned()])
-    };
-    let mut result =
-        TailResult { interval, value: None, digits: 0, status: Status::Certified, routes, notes, seconds: 0.0 };
-    if request.time.is_point() && *request.time.lower() == 0 {
-        result.notes = vec!["at time zero the packet lies inside its box: the probability is exactly zero".to_owned()];
+    if is_exact(request) {
+        let known = Corner::first(request).evaluate(request, request.digits, &effort)?;
+        return Ok((known.meeting, known.routes));
     }
-    Ok(result)
+    let first = request.digits.min(FIRST_DIGITS);
+    let reduction = Reduction::new(request, first);
+    let found = reduction.carry_out(request, first, &effort)?;
+    // The inputs are so narrow that the exact problems limit the digits: solve them better.
+    if first < request.digits && found.0.has_relative_digits(first - 3) {
+        let digits = request.digits + 2;
+        return Reduction::new(request, digits).carry_out(request, digits, &effort);
+    }
+    Ok(found)
 }
 
-type Found = (Interval, Vec<RouteReport>);
-
-fn exact(request: &TailRequest, effort: &Effort) -> Result<Found, Error> {
-    let corner = Corner {
-        half_width: request.packet.half_width().lower().clone(),
-        mass: request.mass.lower().clone(),
-        time: Rational::from(request.time.lower().abs_ref()),
-        beyond: request.beyond.as_ref().map(|r| r.lower().clone()),
-    };
-    corner.evaluate(request, request.digits, effort)
+/// Whether all inputs are single numbers.
+pub(super) fn is_exact(request: &TailRequest) -> bool {
+    let points = request.packet.half_width().is_point() && request.mass.is_point() && request.time.is_point();
+    points && request.beyond.as_ref().is_none_or(ExactInput::is_point)
 }
 
 /// One exact set of inputs.
+#[derive(Clone, PartialEq, Eq, PartialOrd, Ord)]
 struct Corner {
     half_width: Rational,
     mass: Rational,
@@ -94,19 +88,144 @@ struct Corner {
     beyond: Option<Rational>,
 }
 
+/// What was found for one exact set of inputs.
+struct Known {
+    meeting: Interval,
+    routes: Vec<RouteReport>,
+    /// What holds without any route.
+    general: Interval,
+}
+
 impl Corner {
-    fn evaluate(&self, request: &TailRequest, digits: u32, effort: &Effort) -> Result<Found, Error> {
-        match scale(&self.half_width, &self.mass, &self.time, self.beyond.as_ref()) {
-            None => Ok((Interval::new(Float::new(64), Float::new(64)), Vec::new())),
-            Some(problem) => run_routes(&problem, request.routes, digits, effort),
+    /// The lower ends of all inputs, at the smallest time.
+    fn first(request: &TailRequest) -> Corner {
+        Corner {
+            half_width: request.packet.half_width().lower().clone(),
+            mass: request.mass.lower().clone(),
+            time: absolute(&request.time).0,
+            beyond: request.beyond.as_ref().map(|region| region.lower().clone()),
         }
+    }
+
+    fn evaluate(&self, request: &TailRequest, digits: u32, effort: &Effort) -> Result<Known, Error> {
+        let Some(problem) = scale(&self.half_width, &self.mass, &self.time, self.beyond.as_ref()) else {
+            let zero = Interval::new(Float::new(64), Float::new(64));
+            return Ok(Known { meeting: zero.clone(), routes: Vec::new(), general: zero });
+        };
+        let (meeting, routes) = run_routes(&problem, request.routes, digits, effort)?;
+        Ok(Known { meeting, routes, general: without_routes(&problem) })
+    }
+
+    fn in_words(&self) -> String {
+        let region = self.beyond.as_ref().map_or("cone".to_owned(), ToString::to_string);
+        format!("half-width {}, mass {}, time {}, beyond {region}", self.half_width, self.mass, self.time)
     }
 }
 
+/// A bound: the value at a corner, times the factor for an upper bound, divided by it for a lower.
+type Bound = (Corner, Float);
+
+/// A part of the inputs' box with its bounds, of which the best ones count.
+struct Piece {
+    lower: Vec<Bound>,
+    upper: Vec<Bound>,
+}
+
+/// An interval problem as exact ones.
+struct Reduction {
+    /// The lemma and the ends of the pieces, for certificates.
+    witness: Vec<(String, String)>,
+    pieces: Vec<Piece>,
+    bits: Bits,
+}
+
+impl Reduction {
+    fn new(request: &TailRequest, digits: u32) -> Reduction {
+        let bits = 64 + 4 * digits;
+        match &request.beyond {
+            Some(region) => fixed_region(request, region, bits),
+            None => at_the_cone(request, bits),
+        }
+    }
+
+    /// Solves the exact problems, each once, and joins the bounds.
+    fn carry_out(
+        &self,
+        request: &TailRequest,
+        digits: u32,
+        effort: &Effort,
+    ) -> Result<(Interval, Vec<RouteReport>), Error> {
+        let mut solved: BTreeMap<&Corner, Known> = BTreeMap::new();
+        for (corner, _) in self.pieces.iter().flat_map(|piece| piece.lower.iter().chain(&piece.upper)) {
+            if !solved.contains_key(corner) {
+                solved.insert(corner, corner.evaluate(request, digits, effort)?);
+            }
+        }
+        let meeting = self.join(|corner| solved.get(corner).map(|known| known.meeting.clone()));
+        let meeting = meeting.ok_or_else(|| Error::Internal { found: "an interval without pieces".to_owned() })?;
+        let count = solved.values().map(|known| known.routes.len()).max().unwrap_or(0);
+        let routes = (0..count).filter_map(|index| self.report(index, &solved)).collect();
+        Ok((meeting, routes))
+    }
+
+    /// The hull of all pieces; `None` if a value is missing.
+    fn join(&self, value: impl Fn(&Corner) -> Option<Interval>) -> Option<Interval> {
+        let mut hull: Option<Interval> = None;
+        for piece in &self.pieces {
+            let mut lower = Float::new(self.bits);
+            for (corner, factor) in &piece.lower {
+                let bound = rounding::down(self.bits, value(corner)?.lower() / factor);
+                lower = if bound > lower { bound } else { lower };
+            }
+            let mut upper = rounding::up(self.bits, rug::float::Special::Infinity);
+            for (corner, factor) in &piece.upper {
+                let bound = rounding::up(self.bits, value(corner)?.upper() * factor);
+                upper = if bound < upper { bound } else { upper };
+            }
+            let interval = Interval::new(lower, upper);
+            hull = Some(hull.map_or(interval.clone(), |so_far| so_far.hull(&interval)));
+        }
+        hull
+    }
+
+    /// What one route found: its own enclosure, and the exact problems that it rests on.
+    fn report(&self, index: usize, solved: &BTreeMap<&Corner, Known>) -> Option<RouteReport> {
+        // At time zero no route has to run. Where a route has no bounds, the general ones remain.
+        let own = |known: &Known| known.routes.get(index).and_then(|route| route.interval.clone());
+        let interval_of = |known: &Known| own(known).unwrap_or_else(|| known.general.clone());
+        let reports: Vec<&RouteReport> = solved.values().filter_map(|known| known.routes.get(index)).collect();
+        let mut witness = self.witness.clone();
+        for (number, (corner, known)) in solved.iter().enumerate() {
+            let shown = shown(&interval_of(known));
+            let effort =
+                known.routes.get(index).map_or(String::new(), |r| format!(", {} bits, {} nodes", r.bits, r.nodes));
+            witness.push((format!("exact problem {}", number + 1), format!("{}: {shown}{effort}", corner.in_words())));
+        }
+        let first = reports.first()?;
+        let note = reports.iter().find_map(|report| report.note.as_ref());
+        let joined = || self.join(|corner| solved.get(corner).map(interval_of));
+        Some(RouteReport {
+            name: first.name,
+            method: first.method,
+            interval: reports.iter().any(|report| report.interval.is_some()).then(joined).flatten(),
+            bits: reports.iter().map(|report| report.bits).max().unwrap_or(0),
+            nodes: reports.iter().map(|report| report.nodes).sum(),
+            seconds: reports.iter().map(|report| report.seconds).sum(),
+            note: note.map(|note| format!("in one of {} exact problems: {note}", solved.len())),
+            witness,
+        })
+    }
+}
+
+fn shown(interval: &Interval) -> String {
+    let digits = interval.relative_digits(FIRST_DIGITS) + 3;
+    let (lower, upper) = (interval.lower(), interval.upper());
+    format!("[{}, {}]", decimal::lower_decimal(lower, digits), decimal::upper_decimal(upper, digits))
+}
+
 /// Lemma 1: two corners bound everything.
-fn fixed_region(request: &TailRequest, region: &ExactInput, effort: &Effort) -> Result<Found, Error> {
+fn fixed_region(request: &TailRequest, region: &ExactInput, bits: Bits) -> Reduction {
     let (first, last) = absolute(&request.time);
-    let digits = request.digits.min(CORNER_DIGITS);
     let smallest = Corner {
         half_width: request.packet.half_width().lower().clone(),
         mass: request.mass.upper().clone(),
@@ -119,110 +238,96 @@ fn fixed_region(request: &TailRequest, region: &ExactInput, effort: &Effort) -> 
         time: last,
         beyond: Some(region.lower().clone()),
     };
-    let low = smallest.evaluate(request, digits, effort)?;
-    let high = largest.evaluate(request, digits, effort)?;
-    Ok((low.0.hull(&high.0), join_reports(low.1, high.1)))
+    let one = Float::with_val(bits, 1);
+    let piece = Piece { lower: vec![(smallest, one.clone())], upper: vec![(largest, one)] };
+    let lemma = "Lemma 1: P increases with time and half-width, decreases with mass and distance";
+    Reduction { witness: vec![("interval inputs".to_owned(), lemma.to_owned())], pieces: vec![piece], bits }
 }
 
 /// Lemma 2 on pieces of the box of half-widths and times.
-fn at_the_cone(request: &TailRequest, effort: &Effort) -> Result<Found, Error> {
-    let widths = pieces(request.packet.half_width().lower(), request.packet.half_width().upper());
+fn at_the_cone(request: &TailRequest, bits: Bits) -> Reduction {
+    let widths = ends(request.packet.half_width().lower(), request.packet.half_width().upper());
     let (first, last) = absolute(&request.time);
-    let times = pieces(&first, &last);
-    let mut found: Option<Found> = None;
-    for width in &widths {
-        for time in &times {
-            let next = piece(request, width, time, effort)?;
-            found = Some(match found {
-                None => next,
-                Some(so_far) => (so_far.0.hull(&next.0), join_reports(so_far.1, next.1)),
-            });
-        }
+    let times = ends(&first, &last);
+    let mut list = Vec::new();
+    for width in pairs(&widths) {
+        list.extend(pairs(&times).into_iter().map(|time| piece(request, width, time, bits)));
     }
-    found.ok_or_else(|| Error::Internal { found: "an interval without pieces".to_owned() })
+    let lemma = "Lemma 2: P times a power of half-width or time, or times exp(2 m t), is monotone";
+    let listed = |values: &[Rational]| values.iter().map(ToString::to_string).collect::<Vec<_>>().join(", ");
+    let witness = vec![
+        ("interval inputs".to_owned(), lemma.to_owned()),
+        ("ends of the pieces of the half-width".to_owned(), listed(&widths)),
+        ("ends of the pieces of the time".to_owned(), listed(&times)),
+    ];
+    Reduction { witness, pieces: list, bits }
 }
 
-/// Cuts `[low, high]` into pieces, geometrically where possible so that ratios are small.
-fn pieces(low: &Rational, high: &Rational) -> Vec<(Rational, Rational)> {
+/// Ends of the pieces of `[low, high]`: one end for a point, ratios alike for a wide interval.
+fn ends(low: &Rational, high: &Rational) -> Vec<Rational> {
     if low == high {
-        return vec![(low.clone(), high.clone())];
+        return vec![low.clone()];
     }
     let step = Rational::from(high - low) / PIECES;
-    let mut ends: Vec<Rational> = (0..PIECES).map(|k| Rational::from(&step * k) + low).collect();
-    ends.push(high.clone());
-    ends.windows(2).map(|pair| (pair[0].clone(), pair[1].clone())).collect()
+    let even = |k: u32| Rational::from(&step * k) + low;
+    let ratio = if *low == 0 { 1.0 } else { Rational::from(high / low).to_f64() };
+    let inner = |k: u32| {
+        if !(4.0..1e300).contains(&ratio) {
+            return even(k);
+        }
+        // Any increasing ends will do, so the power may be rough.
+        let power = Rational::from_f64(ratio.powf(f64::from(k) / f64::from(PIECES))).unwrap_or_default();
+        low * power
+    };
+    let mut ends = vec![low.clone()];
+    for end in (1..PIECES).map(inner).chain([high.clone()]) {
+        if ends.last().is_some_and(|last| *last < end) && end <= *high {
+            ends.push(end);
+        }
+    }
+    ends
+}
+
+/// Neighbouring ends; a single end is a piece of its own.
+fn pairs(ends: &[Rational]) -> Vec<(&Rational, &Rational)> {
+    match ends {
+        [point] => vec![(point, point)],
+        _ => ends.iter().zip(ends.iter().skip(1)).collect(),
+    }
 }
 
 /// Bounds on one piece: values at its corners times the factors of Lemma 2.
 fn piece(
     request: &TailRequest,
-    width: &(Rational, Rational),
-    time: &(Rational, Rational),
-    effort: &Effort,
-) -> Result<Found, Error> {
-    const BITS: u32 = 128;
-    let digits = request.digits.min(CORNER_DIGITS);
-    let at = |mass: &Rational, time: &Rational| {
-        let corner = Corner { half_width: width.0.clone(), mass: mass.clone(), time: time.clone(), beyond: None };
-        corner.evaluate(request, digits, effort)
+    (narrow, wide): (&Rational, &Rational),
+    (early, late): (&Rational, &Rational),
+    bits: Bits,
+) -> Piece {
+    let corner = |mass: &Rational, time: &Rational| Corner {
+        half_width: narrow.clone(),
+        mass: mass.clone(),
+        time: time.clone(),
+        beyond: None,
     };
     // From the left half-width a1: P(a) lies between P(a1) a1/a and P(a1) a/a1.
-    let stretch = Real::from_rational(&Rational::from(&width.1 / &width.0), BITS);
+    let stretch = Rational::from(wide / narrow);
+    let stretched = |factor: &Real| factor.mul(&Real::from_rational(&stretch, bits), bits).upper(bits);
     let (light, heavy) = (request.mass.lower(), request.mass.upper());
-    let (high_late, reports_high) = at(light, &time.1)?;
-    let (low_early, reports_low) = at(heavy, &time.0)?;
-    let grow = growth(light, time, BITS);
-    let fall = growth(heavy, time, BITS);
-    let mut upper = scaled_upper(&high_late, &grow, BITS);
-    let mut lower = scaled_lower(&low_early, &fall, BITS);
-    if time.0 != 0 && time.0 != time.1 {
-        let ratio = Real::from_rational(&Rational::from(&time.1 / &time.0).square(), BITS);
-        let (high_early, _) = at(light, &time.0)?;
-        let (low_late, _) = at(heavy, &time.1)?;
-        let falling = |mass: &Rational| Rational::from(mass * &time.0) >= 1;
-        let one = Real::from_i64(1);
-        let bound = scaled_upper(&high_early, if falling(light) { &one } else { &ratio }, BITS);
-        upper = if bound < upper { bound } else { upper };
-        let bound = scaled_lower(&low_late, if falling(heavy) { &one } else { &ratio }, BITS);
-        lower = if bound > lower { bound } else { lower };
-    }
-    let upper = rounding::up(BITS, &upper * &stretch.upper(BITS));
-    let lower = rounding::down(BITS, &lower / &stretch.upper(BITS));
-    Ok((Interval::new(lower, upper), join_reports(reports_low, reports_high)))
-}
-
-/// `exp(2 m (t2 - t1))`.
-fn growth(mass: &Rational, time: &(Rational, Rational), bits: u32) -> Real {
-    let exponent = Rational::from(&time.1 - &time.0) * mass * 2;
-    elementary::exp(&Real::from_rational(&exponent, bits), bits)
-}
-
-fn scaled_upper(interval: &Interval, factor: &Real, bits: u32) -> Float {
-    rounding::up(bits, interval.upper() * &factor.upper(bits))
-}
-
-fn scaled_lower(interval: &Interval, factor: &Real, bits: u32) -> Float {
-    rounding::down(bits, interval.lower() / &factor.upper(bits))
-}
-
-/// Joins the reports of several exact problems: the hull of each route's intervals.
-fn join_reports(left: Vec<RouteReport>, right: Vec<RouteReport>) -> Vec<RouteReport> {
-    if left.is_empty() {
-        return right;
-    }
-    if right.is_empty() {
-        return left;
-    }
-    let join = |(one, two): (RouteReport, RouteReport)| RouteReport {
-        interval: match (&one.interval, &two.interval) {
-            (Some(x), Some(y)) => Some(x.hull(y)),
-            _ => None,
-        },
-        bits: one.bits.max(two.bits),
-        nodes: one.nodes + two.nodes,
-        seconds: one.seconds + two.seconds,
-        note: one.note.or(two.note),
-        ..one
+    let growth = |mass: &Rational| {
+        // exp(2 m (t2 - t1)).
+        let exponent = Rational::from(late - early) * mass * 2;
+        elementary::exp(&Real::from_rational(&exponent, bits), bits)
     };
-    left.into_iter().zip(right).map(join).collect()
+    let mut upper = vec![(corner(light, late), stretched(&growth(light)))];
+    let mut lower = vec![(corner(heavy, early), stretched(&growth(heavy)))];
+    if *early != 0 && early != late {
+        let square = Real::from_rational(&Rational::from(late / early).square(), bits);
+        let factor = |mass: &Rational| {
+            let falling = Rational::from(mass * early) >= 1;
+            if falling { stretched(&Real::from_i64(1)) } else { stretched(&square) }
+        };
+        upper.push((corner(light, early), factor(light)));
+        lower.push((corner(heavy, late), factor(heavy)));
+    }
+    Piece { lower, upper }
 }

@@ -1,11 +1,13 @@
 //! Reports for programs: one JSON object on one line.
 //!
 //! Numbers that matter are strings, since a reader that goes through double precision would spoil
-//! them. The shapes are fixed by `schemas/tail-result.schema.json`; `status` tells them apart:
-//! `certified` and `fewer digits` ([`result`]), `not certified` ([`scout`]), `error` ([`error`]).
+//! them. `status` tells the shapes apart: `certified` and `fewer digits` ([`result`]; fixed by
+//! `schemas/tail-result.schema.json`), `not certified` ([`scout`]; `tail-estimate.schema.json`) and
+//! `error` ([`error`]; `error.schema.json`).
 
-use super::{CAUTION, Inputs, PROGRAM, RouteLine, TailReport, VERSION};
+use super::{CAUTION, PROGRAM, RouteLine, TailReport, VERSION};
 use crate::error::Error;
+use crate::quantities::question::Inputs;
 use crate::scout::Scout;
 use serde::Serialize;
 
@@ -17,6 +19,8 @@ struct ResultObject<'a> {
     upper: &'a str,
     value: Option<&'a str>,
     digits: u32,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    at: Option<BoundsObject<'a>>,
     routes: Vec<RouteObject<'a>>,
     status: &'a str,
     notes: &'a [String],
@@ -24,6 +28,12 @@ struct ResultObject<'a> {
     seconds: f64,
     program: &'a str,
     version: &'a str,
+}
+
+#[derive(Serialize)]
+struct BoundsObject<'a> {
+    lower: &'a str,
+    upper: &'a str,
 }
 
 #[derive(Serialize)]
@@ -55,6 +65,8 @@ struct ScoutObject<'a> {
 struct ErrorObject<'a> {
     status: &'a str,
     field: Option<&'a str>,
+    was: Option<&'a str>,
+    wanted: Option<&'a str>,
     message: String,
     routes: Vec<DisagreeingRoute<'a>>,
     exit_code: u8,
@@ -81,6 +93,7 @@ pub fn result(report: &TailReport) -> Result<String, Error> {
         upper: &report.bounds.upper,
         value: report.value.as_ref().map(|value| value.text.as_str()),
         digits: report.digits,
+        at: report.at.as_ref().map(|at| BoundsObject { lower: &at.lower, upper: &at.upper }),
         routes: report.routes.iter().map(route).collect(),
         status: report.status.name(),
         notes: &report.notes,
@@ -127,9 +140,10 @@ pub fn scout(quantity: &str, inputs: &Inputs, scout: &Scout) -> Result<String, E
 /// # Errors
 /// As for [`result`].
 pub fn error(error: &Error) -> Result<String, Error> {
-    let field = match error {
-        Error::BadInput { field, .. } | Error::Missing { field, .. } => Some(field.as_str()),
-        _ => None,
+    let (field, was, wanted) = match error {
+        Error::BadInput { field, was, wanted } => (Some(field.as_str()), Some(was.as_str()), Some(wanted.as_str())),
+        Error::Missing { field, wanted } => (Some(field.as_str()), None, Some(wanted.as_str())),
+        _ => (None, None, None),
     };
     let routes = match error {
         Error::RoutesDisagree { intervals } => {
@@ -140,7 +154,8 @@ pub fn error(error: &Error) -> Result<String, Error> {
     let message = error.to_string();
     let message = message.lines().next().unwrap_or_default().to_owned();
     let exit_code = error.exit_code();
-    line(&ErrorObject { status: "error", field, message, routes, exit_code, program: PROGRAM, version: VERSION })
+    let (status, program, version) = ("error", PROGRAM, VERSION);
+    line(&ErrorObject { status, field, was, wanted, message, routes, exit_code, program, version })
 }
 
 fn line(object: &impl Serialize) -> Result<String, Error> {

@@ -5,7 +5,8 @@
 //! more than [`CHUNK`] characters are shortened in the middle, with the number of characters left
 //! out; in full they are in the JSON report.
 
-use super::{CAUTION, DecimalBounds, Inputs, RouteLine, TailReport};
+use super::{CAUTION, DecimalBounds, RouteLine, TailReport};
+use crate::quantities::question::Inputs;
 use crate::quantities::tail::Status;
 use crate::scout::Scout;
 
@@ -25,6 +26,9 @@ pub fn result(report: &TailReport) -> String {
     text.push('\n');
     text += &value(report);
     text += &numbers(&report.bounds);
+    if let Some(at) = &report.at {
+        text += &entry("at time", &format!("from {} to {}", shortened(&at.lower), shortened(&at.upper)));
+    }
     for route in &report.routes {
         text.push('\n');
         text += &route_lines(route);
@@ -54,19 +58,30 @@ pub fn scout(words: &str, inputs: &Inputs, scout: &Scout) -> String {
 fn heading(words: &str, inputs: &Inputs) -> String {
     let mut text = format!("{words}\n");
     text += "Free particle released at time 0, Newton-Wigner position, units with hbar = c = 1\n\n";
-    let listed = [
-        ("packet", &inputs.packet),
-        ("half-width a", &inputs.half_width),
-        ("mass m", &inputs.mass),
-        ("time t", &inputs.time),
-        ("beyond R", &inputs.beyond),
-        ("side", &inputs.side),
-    ];
-    for (name, read) in listed {
-        let explained = if read == "cone" { "cone (a + |t|)" } else { read };
-        text += &entry(name, &shortened(&one_line(explained)));
+    // How an answer is computed is said elsewhere.
+    const ELSEWHERE: [&str; 4] = ["digits", "route", "max_bits", "time_limit"];
+    for (name, read) in inputs.iter().filter(|(name, _)| !ELSEWHERE.contains(name)) {
+        let explained = match (name, read, inputs.get("half_width")) {
+            ("beyond", "cone", Some(_)) => "cone (a + |t|)",
+            _ => read,
+        };
+        text += &entry(&label(name), &shortened(&one_line(explained)));
     }
     text
+}
+
+/// The name of an input with its symbol.
+fn label(name: &str) -> String {
+    let symbol = match name {
+        "half_width" | "radius" => " a",
+        "mass" => " m",
+        "time" => " t",
+        "beyond" => " R",
+        "momentum" => " k",
+        _ => "",
+    };
+    let words = if name == "half_width" { "half-width".to_owned() } else { name.replace('_', " ") };
+    words + symbol
 }
 
 fn value(report: &TailReport) -> String {
@@ -85,7 +100,7 @@ fn status(report: &TailReport) -> String {
     match report.status {
         Status::Certified if report.bounds.lower == report.bounds.upper => "certified: exact".to_owned(),
         Status::Certified => {
-            format!("certified: the interval is proven, {} relative digits", report.digits)
+            format!("certified: {} relative digits; value within one unit of its last digit", report.digits)
         }
         Status::FewerDigits => format!(
             "fewer digits than asked: {} of {}; the interval is proven all the same",

@@ -58,3 +58,21 @@ pub(super) fn log_probability(a: f64, t: f64, d: f64) -> f64 {
     }
     (sum * h * h).max(1e-300).ln() - (PI * PI * a / 4.0).ln() - 2.0 * proper_distance(t, d)
 }
+
+/// A rough natural logarithm of a positive rational of any size.
+pub(super) fn ln_of(value: &Rational) -> f64 {
+    Float::with_val(53, value).ln().to_f64()
+}
+
+/// A rough natural logarithm of the two-sided probability, mass zero, half-width one.
+///
+/// With `m = min(1, t)`, `M = max(1, t)`: `P` is near `m/6` at the cone, `m^2/(pi^2 d)` for `m << d << M` and
+/// `4 t^2/(3 pi^2 d^3)` far away; their inverses are added, with `8.4 m/M` found by trial.
+pub(super) fn massless_log_probability(ln_time: f64, ln_distance: f64) -> f64 {
+    let (small, large) = (ln_time.min(0.0), ln_time.max(0.0));
+    let near = (6.0 + 8.4 * (small - large).exp()).ln();
+    let middle = (PI * PI).ln() + ln_distance - small;
+    let far = (0.75 * PI * PI).ln() + 3.0 * ln_distance - small - 2.0 * large;
+    let top = near.max(middle).max(far);
+    small - top - ((near - top).exp() + (middle - top).exp() + (far - top).exp()).ln()
+}

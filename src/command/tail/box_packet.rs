@@ -1,6 +1,6 @@
 //! `coneproof tail box`.
 
-use super::{TailArguments, fields};
+use super::{Answer, TailArguments, fields};
 use crate::error::Error;
 use crate::packets::BoxPacket;
 use crate::quantities::tail::TailRequest;
@@ -13,10 +13,11 @@ pub(super) struct BoxArguments {
     #[arg(long, value_name = "A", allow_hyphen_values = true)]
     half_width: Option<String>,
     #[command(flatten)]
-    pub(super) common: TailArguments,
+    common: TailArguments,
 }
 
-const AFTER_HELP: &str = "\
+const AFTER_HELP: &str = concat!(
+    "\
 Numbers are read exactly: 2, 0.1 (one tenth), 2.5e-9, 1/3, or an interval \"[0.99, 1.01]\".
 Units have hbar = c = 1; only mass * half-width, time / half-width and R / half-width matter.
 
@@ -27,18 +28,23 @@ Examples:
   coneproof tail box --half-width 1 --time 1 --digits 1000 --time-limit 2.5 --format json
   coneproof tail box --half-width 1 --time 1 --scout
 
-Exit codes:
-  0  certified to the digits asked, or a scout's estimate
-  2  bad input, or a file that cannot be written: one sentence says what and why
-  3  fewer digits than asked: the interval printed is proven, but wider
-  4  internal fault: the program contradicted itself and gives no answer
+",
+    exit_codes!(),
+    "
 
 The numbers describe an idealised free particle; do not base decisions about hardware or safety on
-them alone.";
+them alone."
+);
 
 impl BoxArguments {
+    /// The answer.
+    pub(super) fn answer(&self) -> Result<Answer, Error> {
+        let request = self.request()?;
+        if self.common.scout { self.common.estimate(&request) } else { self.common.certify(&request) }
+    }
+
     /// The request, with every field checked.
-    pub(super) fn request(&self) -> Result<TailRequest, Error> {
+    fn request(&self) -> Result<TailRequest, Error> {
         let half_width = fields::required("half-width", self.half_width.as_deref(), "--half-width 1")?;
         let packet = BoxPacket::new(half_width)?;
         let mass = fields::exact("mass", &self.common.mass)?;

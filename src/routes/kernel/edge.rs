@@ -84,7 +84,7 @@ pub(super) fn integral(
     let slack = bound.shift(1).add(error).mul(error).mul(Magnitude::from_u64(5));
     let bits = plan.scale + 64;
     let moments = moments(&parts, plan, bits).widen(slack);
-    let weight = Rational::from(&plan.to / Rational::from(problem.time.square_ref())) / 4;
+    let weight = (&plan.to / Rational::from(problem.time.square_ref())) / 4;
     Ok(moments.mul(&Real::from_rational(&weight, bits), bits))
 }
 

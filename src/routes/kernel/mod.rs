@@ -85,13 +85,18 @@ impl Route for Kernel {
         effort.allow_bits(plan.bits)?;
         let series = all_series(problem, &plan, effort)?;
         let (pieces, carry) = carry_inward(problem, &plan, &series)?;
-        let integrals = all_squares(&pieces, &plan, effort)?;
-        let mut total = Real::zero();
-        for integral in &integrals {
+        let at_edge = || match &plan.edge {
+            Some(edge) => edge::integral(problem, edge, &carry, effort),
+            None => Ok(Real::zero()),
+        };
+        let (edge, integrals) = if plan.bits >= PARALLEL_FROM {
+            rayon::join(at_edge, || all_squares(&pieces, &plan, effort))
+        } else {
+            (at_edge(), all_squares(&pieces, &plan, effort))
+        };
+        let mut total = edge?;
+        for integral in &integrals? {
             total = total.add(integral, plan.bits);
-        }
-        if let Some(edge) = &plan.edge {
-            total = total.add(&edge::integral(problem, edge, &carry, effort)?, plan.bits);
         }
         let tail = tail_bound(problem, &plan);
         let half = Real::from_float(tail.to_float()).shift(-1);
@@ -193,7 +198,7 @@ pub(super) fn function_bound(time: &Rational, s: &Rational) -> Magnitude {
 
 /// `r = sqrt(s (s + 2t))`.
 fn separation(time: &Rational, s: &Rational) -> Real {
-    let square = Rational::from(s + Rational::from(time * 2)) * s;
+    let square = (s + Rational::from(time * 2)) * s;
     sqrt(&Real::from_rational(&square, BOUND_BITS), BOUND_BITS)
 }
 

@@ -103,7 +103,7 @@ impl PanelSeries {
             // Everything is below one unit.
             return Ok(PanelSeries { coefficients: vec![Integer::new()], error: full_size(time, s, half) });
         }
-        let square = Rational::from(s + Rational::from(time * 2)) * s;
+        let square = (s + Rational::from(time * 2)) * s;
         let wide = Real::from_rational(half, scale + 64);
         let (k, g) = start_values(&square, half, scale);
         let (k, k_error) = fixed(&k.mul(&wide, scale + 64), scale)?;
@@ -218,7 +218,7 @@ fn amplification(time: &Rational, s: &Rational, half: &Rational) -> Amplificatio
     const PIECES: u64 = 8;
     let bits = BOUND_BITS;
     let one = Magnitude::ONE;
-    let far = Rational::from(s + Rational::from(time * 2));
+    let far = s + Rational::from(time * 2);
     let square = Real::from_rational(&Rational::from(&far * s), bits);
     let root = sqrt(&square, bits);
     let (balance, balance_below) = (root.abs_upper().max(one), root.abs_lower().max(one));
@@ -248,7 +248,7 @@ fn truncation(time: &Rational, s: &Rational, half: &Rational, terms: usize) -> M
         -r - 0.5 * r.ln() - (t + left).ln() - (terms as f64 + 1.0) * ratio.ln() - (1.0 - 1.0 / ratio).ln()
     };
     let ratio = dyadic(best_ratio(sf / w, cost), 20);
-    let left = Rational::from(s - Rational::from(half * &ratio));
+    let left = s - Rational::from(half * &ratio);
     let size = function_bound(time, &left);
     let ratio = Real::from_rational(&ratio, BOUND_BITS);
     let inverse = Real::from_i64(1).div(&ratio, BOUND_BITS);

@@ -134,9 +134,10 @@ impl Plan {
         let goal = f64::from(digits) * LN_10;
         let sigma = edge_width(a, t, goal);
         let mut plan = Plan { edge: None, panels: Vec::new(), bits: 64 };
-        let start = if d >= 0.5 * sigma { problem.distance.clone() } else { dyadic(sigma, 1) };
+        let with_edge = d < 0.5 * sigma;
+        let start = if with_edge { dyadic(sigma, 1) } else { problem.distance.clone() };
         plan.panels = panels(&sizes, &start, goal, proper_distance(t, d))?;
-        if d < 0.5 * sigma {
+        if with_edge {
             plan.edge = Some(edge(&sizes, &problem.distance, start, plan.panels.len()));
         }
         let edge_scale = plan.edge.as_ref().map_or(64, |e| e.scale);
@@ -181,7 +182,8 @@ fn panels(sizes: &Sizes, start: &Rational, goal: f64, origin: f64) -> Result<Vec
     loop {
         let s = from.to_f64();
         let r = sizes.separation(s);
-        let squared = list.is_empty() || log_tail(sizes, s) > sizes.tolerance - 2.0;
+        // Squared panels must be the first ones without a gap: the tail bound begins where they end.
+        let squared = list.last().is_none_or(|before| before.squared && log_tail(sizes, s) > sizes.tolerance - 2.0);
         if !squared && sizes.log_function(s) < constant_goal {
             return Ok(list);
         }

@@ -131,10 +131,10 @@ impl ConeWeights {
             rise >>= fine + 2;
             let z = powers.at(plan.first + index);
             let square = Integer::from(z.square_ref()) >> fine;
-            let inverse = Integer::from(&whole / Integer::from(&one + &square));
+            let inverse = &whole / Integer::from(&one + &square);
             rise *= inverse;
             rise >>= fine;
-            let weight = Integer::from(&one - square) * &rise;
+            let weight = (&one - square) * &rise;
             result.weights.push(weight >> (fine + guard));
             result.ratios.push((rise * z) >> (fine + guard));
         }

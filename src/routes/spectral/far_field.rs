@@ -34,7 +34,7 @@ use super::cone_nodes::Powers;
 use super::nodes::{Nodes, fixed};
 use super::plan::{Plan, far_series_length};
 use super::{BOUND_BITS, Setting, exp_minus_upper};
-use crate::arithmetic::{Magnitude, Real};
+use crate::arithmetic::{Bits, Magnitude, Real};
 use crate::functions::elementary::exp;
 use crate::routes::{Effort, RouteFailure};
 use rug::Integer;
@@ -152,6 +152,11 @@ fn inverse_power(lambda: &Real, power: usize) -> Magnitude {
     Magnitude::ONE.div(lambda.abs_lower()).pow(power as u64)
 }
 
+/// Lower bound of a number that the estimates need to be positive: zero, so that they give nothing, if it may not be.
+fn positive_lower(value: &Real) -> Magnitude {
+    if value.certainly_positive() { value.abs_lower() } else { Magnitude::ZERO }
+}
+
 /// A list of balls as integers in units of `2^-scale`.
 struct FixedList {
     values: Vec<Integer>,
@@ -242,25 +247,27 @@ fn shares(geometry: &Geometry, most: usize, plan: &Plan) -> Vec<Real> {
     list
 }
 
-/// `s_1 = 1/2 + L(q) - 2 L(q^2)`.
+/// `s_1 = 1/2 + Sum_{r>=1} q^r/(1 + q^r)`.
 fn first_share(geometry: &Geometry, plan: &Plan) -> Real {
     let bits = plan.bits;
     let one = Real::from_i64(1);
     let q = one.sub(&one.div(&geometry.geometric[1], bits), bits);
-    let plain = lambert(&q, plan);
-    let squared = lambert(&q.square(bits), plan);
-    plain.sub(&squared.shift(1), bits).add(&one.shift(-1), bits)
+    alternating_lambert(&q, bits).add(&one.shift(-1), bits)
+}
+
+/// `Sum_{r>=1} q^r/(1 + q^r) = L(q) - 2 L(q^2)` for `0 < q < 1`.
+pub(super) fn alternating_lambert(q: &Real, bits: Bits) -> Real {
+    lambert(q, bits).sub(&lambert(&q.square(bits), bits).shift(1), bits)
 }
 
 /// `L(x) = Sum_{n>=1} x^(n^2) (1 + x^n)/(1 - x^n)` for `0 < x < 1`.
 ///
 /// The terms beyond `N` sum to at most `2 x^((N+1)^2)/(1 - x)^2`: each is at most `2 x^(n^2)/(1 - x)`, and
 /// `Sum_{n>N} x^(n^2) <= x^((N+1)^2)/(1 - x)`.
-fn lambert(x: &Real, plan: &Plan) -> Real {
-    let bits = plan.bits;
+fn lambert(x: &Real, bits: Bits) -> Real {
     let one = Real::from_i64(1);
     let square = x.square(bits);
-    let goal = Magnitude::power_of_two(-i64::from(plan.bits));
+    let goal = Magnitude::power_of_two(-i64::from(bits));
     let mut total = Real::zero();
     // power = x^n, gaussian = x^(n^2), odd = x^(2n+1)
     let (mut power, mut gaussian, mut odd) = (x.clone(), x.clone(), x.mul(&square, bits));
@@ -383,8 +390,10 @@ fn horner(coefficients: &[Integer], argument: &Integer, scale: u32) -> Integer {
     // u < 2^-(zeros/2): twice the binary logarithm, from the leading bits.
     let length = argument.significant_bits();
     let leading = Integer::from(argument >> length.saturating_sub(16)).to_u32().unwrap_or(u32::MAX);
-    let zeros = 2 * scale.saturating_sub(length) + u32::from(length > 16 && leading < 46_340);
-    let needed = if zeros == 0 { coefficients.len() } else { (2 * scale / zeros) as usize + 1 };
+    // The argument one has more than `scale` bits, and no power of it may be left out.
+    let below_one = length <= scale && length > 16 && leading < 46_340;
+    let zeros = 2 * scale.saturating_sub(length) + u32::from(below_one);
+    let needed = (2 * scale).checked_div(zeros).map_or(coefficients.len(), |terms| terms as usize + 1);
     for coefficient in coefficients.iter().take(needed).rev() {
         value += coefficient;
         let used = value.significant_bits() + 8;
@@ -406,7 +415,7 @@ impl Geometry {
         let bits = BOUND_BITS;
         let one = Real::from_i64(1);
         let gap = self.outer.mul(&self.edge, bits);
-        let below = one.sub(&gap, bits).abs_lower();
+        let below = positive_lower(&one.sub(&gap, bits));
         let first = self.geometric[1].abs_upper();
         let ratio = gap.abs_upper();
         let terms = plan.cross_terms as u64;
@@ -414,9 +423,33 @@ impl Geometry {
         let series = series.mul(first).mul(first).shift(-2);
         let radius = self.outer_lambda.mul(&self.outer, bits);
         let growth = self.majorant(setting, &radius);
-        let shrink = one.sub(&one.div(&self.outer_lambda, bits), bits).abs_lower();
+        let shrink = positive_lower(&one.sub(&one.div(&self.outer_lambda, bits), bits));
         let moments = growth.mul(inverse_power(&self.outer_lambda, self.outer_terms + 1)).mul(first).div(shrink);
         let spread = ratio.div(below).mul(Magnitude::from_u64(count)).shift(-1);
         series.add(moments.mul(spread))
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn horner_is_as_near_as_its_bound_says() {
+        const SCALE: u32 = 40;
+        // More coefficients than the powers of any argument below one could need.
+        let coefficients: Vec<Integer> = (0..200u32).map(|n| (Integer::from(1) << (SCALE - 8)) / (n + 3)).collect();
+        let size: Integer = coefficients.iter().sum();
+        for argument in [Integer::from(1) << SCALE, (Integer::from(1) << SCALE) - 1, Integer::from(46_341) << 24u32] {
+            let found = horner(&coefficients, &argument, SCALE);
+            let mut exact = rug::Rational::new();
+            let u = rug::Rational::from((argument, Integer::from(1) << SCALE));
+            for coefficient in coefficients.iter().rev() {
+                exact = (exact + coefficient) * &u;
+            }
+            // Two units for each step and what is left out, see `cross`.
+            let bound = 2 * coefficients.len() as u32 + Integer::from(&size >> SCALE) + 1u32;
+            assert!((exact - found).abs() <= bound);
+        }
     }
 }

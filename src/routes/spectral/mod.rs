@@ -67,6 +67,7 @@ mod massless;
 mod near_field;
 mod nodes;
 mod plan;
+pub mod time_derivatives;
 
 use super::{Effort, Route, RouteFailure, RouteOutcome, TailProblem};
 use crate::arithmetic::{Bits, Interval, Magnitude, Real, decimal};
@@ -173,7 +174,12 @@ impl Setting {
             None => (pi(bits).shift(-1), Real::zero()),
             Some(ref b) => {
                 let b = Real::from_rational(b, bits);
-                (b.clone(), crate::functions::elementary::cos(&b, bits))
+                let cosine = crate::functions::elementary::cos(&b, bits);
+                // The lemmas hold for `b <= pi/2`.
+                if !cosine.certainly_positive() || !b.certainly_less(&Real::from_i64(2)) {
+                    return Magnitude::INFINITY;
+                }
+                (b, cosine)
             }
         };
         let constant =

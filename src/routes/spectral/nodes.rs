@@ -3,7 +3,7 @@
 use super::cone_nodes::ConeWeights;
 use super::plan::Plan;
 use super::{BOUND_BITS, Setting, exp_minus_upper};
-use crate::arithmetic::{Magnitude, Real};
+use crate::arithmetic::{Bits, Magnitude, Real};
 use crate::functions::elementary::{exp, exp_m1};
 use crate::routes::{Effort, RouteFailure, TailProblem};
 use rug::Integer;
@@ -97,18 +97,18 @@ fn weight(setting: &Setting, half: &Real, whole: &Real, plan: &Plan) -> (Real, R
     let exponent = setting.left_root.div(half, bits).sub(&setting.right_root.mul(half, bits), bits).square(bits);
     let mut value = exp(&exponent.neg(), bits).shift(-2);
     for rate in [setting.time.mul(&sinh, bits), setting.half_width.mul(&cosh, bits)] {
-        value = value.mul(&one_minus_exp(&rate.shift(1), plan), bits);
+        value = value.mul(&one_minus_exp(&rate.shift(1), plan.scale + 8, bits), bits);
     }
     (value.mul(&sinh.div(&cosh, bits), bits), sinh)
 }
 
-/// `1 - exp(-y)`; for large `y` the ball around one that is as wide as a power of two.
-fn one_minus_exp(y: &Real, plan: &Plan) -> Real {
+/// `1 - exp(-y)`; where `exp(-y) < 2^-fine`, the ball around one that is as wide as a power of two.
+pub(super) fn one_minus_exp(y: &Real, fine: Bits, bits: Bits) -> Real {
     let small = exp_minus_upper(y);
-    if small.cmp_value(Magnitude::power_of_two(-i64::from(plan.scale) - 8)).is_lt() {
+    if small.cmp_value(Magnitude::power_of_two(-i64::from(fine))).is_lt() {
         return Real::from_i64(1).widen(small);
     }
-    exp_m1(&y.neg(), plan.bits).neg()
+    exp_m1(&y.neg(), bits).neg()
 }
 
 /// `(pi^2/32) exp(-Y)` at the last node left out; `pi^2/32 < 0.32 < 2^-1`.

@@ -1,0 +1,3 @@
+//! Claims: what a printed sentence allows, and whether the certified number agrees.
+
+pub mod statement;
