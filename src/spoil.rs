@@ -25,9 +25,15 @@ pub enum Fault {
     /// The power series of the dilogarithm is cut too early, without its tail bound.
     DilogarithmSeriesCut = 8,
     /// What lies beyond the last panel of a piecewise packet is left out.
-    PiecewiseTailForgotten = 40,
+    PiecewiseTailForgotten = 10,
     /// What lies beyond the last node of the spectral sum of a general packet is left out of the bounds.
     CutOffForgotten = 9,
+    /// The distance of the lattice sum from the integral is left out.
+    LatticeErrorForgotten = 40,
+    /// The discretisation error of the contour route is left out.
+    ContourStripForgotten = 41,
+    /// The sum of the contour route ends too early, without its cut-off error.
+    ContourCutForgotten = 42,
 }
 
 #[cfg(feature = "spoil")]

@@ -4,6 +4,7 @@ use super::file::Claim;
 use crate::arithmetic::ExactInput;
 use crate::error::Error;
 use crate::packets::BoxPacket;
+use crate::quantities::catalogue;
 
 use crate::quantities::packet_tail::PacketTail;
 use crate::quantities::peak::PeakRequest;

@@ -5,3 +5,4 @@ pub mod complex_elementary;
 pub(crate) mod constants;
 pub mod dilogarithm;
 pub mod elementary;
+pub mod erfc;

@@ -5,10 +5,12 @@
 
 pub mod box_packet;
 pub mod bspline;
+pub mod gaussian;
 pub mod piecewise;
 pub mod waves;
 
 pub use box_packet::BoxPacket;
 pub use bspline::BSplinePacket;
+pub use gaussian::GaussianPacket;
 pub use piecewise::PiecewisePacket;
 pub use waves::{ExactComplex, WavePacket};

@@ -2,10 +2,12 @@
 //!
 //! * [`question`]: what all questions have in common.
 //! * [`tail`]: the probability of finding a packet beyond a distance outside its light cone.
+//! * [`catalogue`]: the packets that can be named.
 //! * [`meeting`]: how the intervals of unrelated routes become one answer.
 //! * [`packet_tail`]: the same for any packet, with exact inputs.
 //! * [`peak`]: the largest tail over all times.
 
+pub mod catalogue;
 pub mod meeting;
 pub mod packet_tail;
 pub mod peak;

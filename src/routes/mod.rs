@@ -4,9 +4,12 @@
 //! data that an outsider needs to repeat it. Routes share the arithmetic and nothing else.
 
 pub mod cut;
+pub mod contour;
 mod estimate;
+pub mod gaussian;
 pub mod kernel;
 pub mod panels;
+pub mod lattice;
 pub mod spectral;
 
 use crate::arithmetic::{Bits, Interval};
