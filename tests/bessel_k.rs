@@ -1,6 +1,5 @@
 //! The K functions: independent methods against each other, identities, tables, balls.
 #![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
-#![allow(clippy::unwrap_used)]
 
 use coneproof::arithmetic::{Bits, Complex, ExactInput, Magnitude, Real};
 use coneproof::functions::bessel_k::{self, Method};

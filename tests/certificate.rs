@@ -104,6 +104,11 @@ fn documents_of_another_shape_are_refused() {
         let mut shorter = value.clone();
         shorter["routes"][0].as_object_mut().unwrap().remove(name);
         assert!(Certificate::from_json(&shorter.to_string()).is_err(), "a route without {name}");
+        // Even with a hash that fits.
+        shorter.as_object_mut().unwrap().remove("sha256");
+        let digest: String = Sha256::digest(canonical(&shorter)).iter().map(|byte| format!("{byte:02x}")).collect();
+        shorter["sha256"] = digest.into();
+        assert!(Certificate::from_json(&shorter.to_string()).is_err(), "a route without {name}");
     }
     // A forger who computes the hash anew is still held to the order of the bounds.
     let mut forged = certificate("1", "1", None);
