@@ -5,7 +5,9 @@
 //! in [`fields`], so that every refusal names the field, what it was and what would be right;
 //! [`usage`] says the same of what `clap` refuses.
 
+mod density;
 mod fields;
+mod propagator;
 mod tail;
 mod usage;
 
@@ -27,6 +29,10 @@ struct CommandLine {
 enum Quantity {
     /// The probability of finding a packet outside its light cone
     Tail(tail::TailCommand),
+    /// The density of finding a packet at given points, inside and outside its light cones
+    Density(density::DensityCommand),
+    /// The Newton-Wigner propagator, inside and outside the light cone
+    Propagator(propagator::PropagatorCommand),
 }
 
 const AFTER_HELP: &str = "\
@@ -69,6 +75,8 @@ where
     let args: Vec<OsString> = args.into_iter().map(Into::into).collect();
     let answer = match CommandLine::try_parse_from(&args) {
         Ok(CommandLine { quantity: Quantity::Tail(tail) }) => tail.answer(),
+        Ok(CommandLine { quantity: Quantity::Density(density) }) => density.answer(),
+        Ok(CommandLine { quantity: Quantity::Propagator(propagator) }) => propagator.answer(),
         Err(refusal) => usage::answer(refusal, &args),
     };
     match answer {

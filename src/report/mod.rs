@@ -5,6 +5,7 @@
 //! itself to satisfy `upper - lower <= 10^-digits * lower`. Certificates use the same strings.
 
 pub mod json;
+pub mod points;
 pub mod text;
 
 use crate::arithmetic::{Interval, decimal, rounding};

@@ -3,8 +3,12 @@
 //! A [`Route`] gets an exact [`TailProblem`] and a goal in digits and returns an enclosure with the
 //! data that an outsider needs to repeat it. Routes share the arithmetic and nothing else.
 
+pub mod density;
+mod descent;
 mod estimate;
 pub mod kernel;
+pub mod pointwise;
+pub mod propagator;
 pub mod spectral;
 
 use crate::arithmetic::{Bits, Interval};
