@@ -13,12 +13,7 @@ const CASES: [(&str, &str); 5] = [("1", "1"), ("1/10", "100"), ("20", "20"), ("1
 
 fn problem(half_width: &str, time: &str) -> TailProblem {
     let number = |text: &str| text.parse::<ExactInput>().unwrap().lower().clone();
-    TailProblem {
-        half_width: number(half_width),
-        time: number(time),
-        distance: number("0"),
-        massless: false,
-    }
+    TailProblem { half_width: number(half_width), time: number(time), distance: number("0"), massless: false }
 }
 
 fn routes(criterion: &mut Criterion) {
@@ -28,14 +23,17 @@ fn routes(criterion: &mut Criterion) {
             for digits in [15u32, 30, 100] {
                 let id = BenchmarkId::new(format!("a={half_width} t={time}"), digits);
                 let problem = problem(half_width, time);
-                group.bench_function(id, |b| b.iter(|| route.evaluate(black_box(&problem), digits, &Effort::default())));
+                group
+                    .bench_function(id, |b| b.iter(|| route.evaluate(black_box(&problem), digits, &Effort::default())));
             }
         }
         group.finish();
     }
     let mut group = criterion.benchmark_group("thousand digits");
     group.sample_size(10);
-    group.bench_function("kernel", |b| b.iter(|| KERNEL.evaluate(black_box(&problem("1", "1")), 1000, &Effort::default())));
+    group.bench_function("kernel", |b| {
+        b.iter(|| KERNEL.evaluate(black_box(&problem("1", "1")), 1000, &Effort::default()))
+    });
     group.finish();
 }
 

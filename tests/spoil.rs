@@ -42,7 +42,8 @@ fn arithmetic_contains() -> bool {
             balls.contains_rational(&power)
         }) && {
             let wide = ball.clone().widen(coneproof::arithmetic::Magnitude::power_of_two(-3));
-            let corner = Rational::from(&wide.upper(200).to_rational().unwrap() * &wide.upper(200).to_rational().unwrap());
+            let corner =
+                Rational::from(&wide.upper(200).to_rational().unwrap() * &wide.upper(200).to_rational().unwrap());
             wide.mul(&wide, 200).contains_rational(&corner)
         }
     })

@@ -18,6 +18,7 @@ use crate::functions::elementary::sqrt;
 use crate::packets::BoxPacket;
 use crate::routes::Effort;
 use crate::routes::density::DensityProblem;
+use rayon::prelude::*;
 use rug::{Float, Rational};
 use std::time::Instant;
 
@@ -145,7 +146,7 @@ impl DensityRequest {
         let one = |position: &ExactInput| -> Result<DensityPoint, Error> {
             Ok(DensityPoint { position: position.clone(), value: self.at_point(position.lower())? })
         };
-        let points = self.at.iter().map(one).collect::<Result<Vec<_>, _>>()?;
+        let points = self.at.par_iter().map(one).collect::<Result<Vec<_>, _>>()?;
         let mut notes = Vec::new();
         if *self.time.lower() == 0 {
             notes.push("at time zero the amplitude is the packet itself, exactly".to_owned());

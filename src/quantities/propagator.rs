@@ -9,6 +9,7 @@ use crate::arithmetic::{ExactInput, Interval};
 use crate::error::Error;
 use crate::routes::Effort;
 use crate::routes::propagator::PropagatorProblem;
+use rayon::prelude::*;
 use rug::{Float, Rational};
 use std::time::Instant;
 
@@ -119,7 +120,7 @@ impl PropagatorRequest {
     pub fn certify(&self) -> Result<PropagatorResult, Error> {
         self.validate()?;
         let start = Instant::now();
-        let points = self.at.iter().map(|position| self.at_point(position)).collect::<Result<Vec<_>, _>>()?;
+        let points = self.at.par_iter().map(|position| self.at_point(position)).collect::<Result<Vec<_>, _>>()?;
         let mut notes = Vec::new();
         if *self.time.lower() == 0 {
             notes.push("at time zero the propagator is the delta function: zero away from the source".to_owned());

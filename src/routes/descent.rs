@@ -110,7 +110,8 @@ impl Rule {
         let (strip, step) = best;
         let end = last_node(aim);
         let count = (end / step).ceil() + 1.0;
-        if !(step > 0.0 && count < MOST_NODES) {
+        let usable = step > 0.0 && count < MOST_NODES;
+        if !usable {
             return Err(RouteFailure::OutOfReach {
                 reason: "the contour integral would need too many nodes".to_owned(),
             });
@@ -175,7 +176,7 @@ impl Rule {
                 up = up.mul(&ratio, bits);
                 down = down.mul(&inverse_ratio, bits);
             }
-            if k % 64 == 0 {
+            if k.is_multiple_of(64) {
                 effort.check()?;
             }
             let half_sinh = up.sub(&down, bits).shift(-1);
@@ -206,11 +207,14 @@ pub(super) struct Node {
 }
 
 impl Node {
-    /// `e^(i pi/4) dzeta/ds = cosh(s/2)/sqrt(1 - i X/2)`.
+    /// `sqrt(1 - i X/2)`: `e^(i pi/4) dzeta/ds` is `cosh(s/2)` divided by it.
+    pub(super) fn root(&self, bits: Bits) -> Complex {
+        complex_elementary::sqrt(&Complex::new(Real::from_i64(1), self.rise.shift(-1).neg()), bits)
+    }
+
+    /// `e^(i pi/4) dzeta/ds`.
     pub(super) fn turned_slope(&self, bits: Bits) -> Complex {
-        let square = Complex::new(Real::from_i64(1), self.rise.shift(-1).neg());
-        let root = complex_elementary::sqrt(&square, bits);
-        Complex::from_real(self.half_cosh.clone()).div(&root, bits)
+        Complex::from_real(self.half_cosh.clone()).div(&self.root(bits), bits)
     }
 
     /// `e^(-z X)`, doubled where `-s` is a node as well.

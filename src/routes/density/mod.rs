@@ -21,8 +21,8 @@
 //! to leading order; where two such points meet (`x = 0`, `t = a`) the two logarithms add up, since
 //! `F(-inf) - 2 F(y)` appears.
 //!
-//! [`momentum`] finds `F` from the momentum integral, [`position`] from the series of `g` in powers of the
-//! interval `v^2 - t^2`, integrated term by term. They share the arithmetic and the assembly above. [`massless`] is a
+//! `momentum` finds `F` from the momentum integral, `position` from the series of `g` in powers of the
+//! interval `v^2 - t^2`, integrated term by term. They share the arithmetic and the assembly above. `massless` is a
 //! closed form.
 
 mod massless;

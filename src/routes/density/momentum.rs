@@ -80,7 +80,7 @@ impl EdgeFunction for Momentum {
     fn value(&self, place: &Place, effort: &Effort) -> Result<EdgeValue, RouteFailure> {
         let rough = Numbers::new(place, BOUND_BITS);
         let size = rough.interval.to_f64();
-        if !(size.is_finite() && size > 1e-300) {
+        if !size.is_finite() || size < 1e-300 {
             return Err(RouteFailure::OutOfReach { reason: "the point is too near an edge's light cone".to_owned() });
         }
         let rule = rough.choose(place)?;
@@ -190,7 +190,9 @@ impl Numbers {
             let term = if self.timelike {
                 let re = rising.mul(rise, bits).add(&self.distance_square, bits);
                 let below = Complex::new(re, rising.shift(1));
-                node.turned_slope(bits).mul_real(&weight, bits).div(&below, bits)
+                // One division for both the slope and the denominator.
+                let top = Complex::from_real(weight.mul(&node.half_cosh, bits));
+                top.div(&below.mul(&node.root(bits), bits), bits)
             } else {
                 let sum = rise.add(&Real::from_i64(2), bits);
                 let below = rising.mul(&sum, bits).add(&self.distance_square, bits);

@@ -79,7 +79,7 @@ impl EdgeFunction for Position {
         let largest = Rational::from(place.time.square_ref()).max(Rational::from(square.abs_ref()));
         let growth = largest.to_f64().sqrt() + size.max(0.0).sqrt();
         let reason = "the series of the propagator would lose too many digits this far from the light cone's tip";
-        if !(growth * LOG2_E < MOST_EXTRA_BITS) {
+        if !growth.is_finite() || growth * LOG2_E >= MOST_EXTRA_BITS {
             return Err(RouteFailure::OutOfReach { reason: reason.to_owned() });
         }
         // A logarithm near the cone, and sizes of lengths, cost a few more.
@@ -87,7 +87,7 @@ impl EdgeFunction for Position {
             f64::from(value.numer().significant_bits()) - f64::from(value.denom().significant_bits())
         };
         let ranges = span(place.time).abs() + span(place.distance).abs();
-        if !(ranges < MOST_EXTRA_BITS) {
+        if ranges >= MOST_EXTRA_BITS {
             return Err(RouteFailure::OutOfReach { reason: reason.to_owned() });
         }
         let bits = place.bits + (growth * LOG2_E) as Bits + ranges as Bits + 16;
@@ -150,7 +150,7 @@ impl Series {
             // ln 2 + psi_k/2 = ln 2 - gamma + H_k + 1/(2(k+1)).
             let weight = constant.add(&harmonic, bits).add(&Real::from_i64(1).div_u64(2 * (k + 1), bits), bits);
             let term = l.shift(-1).sub(&weight.mul(&p, bits), bits);
-            if k % 2 == 0 {
+            if k.is_multiple_of(2) {
                 real = real.add(&term, bits);
                 imaginary = imaginary.add(&p, bits);
             } else {
@@ -167,12 +167,12 @@ impl Series {
                 break Magnitude::ZERO;
             }
             k += 1;
-            if k % 64 == 0 {
+            if k.is_multiple_of(64) {
                 effort.check()?;
             }
             let step = k * (k + 1);
             edge = edge.mul(&self.quarter_square, bits).div_u64(step, bits);
-            bound = bound.mul(self.quarter_largest).div(Magnitude::from_u64(step));
+            bound = bound.mul(self.quarter_largest).div(Magnitude::from_u64(k)).div(Magnitude::from_u64(k + 1));
             let lifted = l.add(&p.div_u64(k, bits), bits);
             let from_p = self.half_time_square.mul(&p, bits).div_u64(k + 1, bits);
             let from_l = self.half_time_square.mul(&lifted, bits).div_u64(k + 1, bits);

@@ -26,7 +26,7 @@
 //! the positive axis to `x^2 - t^2 + i0`: for `|x| < t` the root is `s = i u`, `u = sqrt(t^2 - x^2)`, and `K_nu(i m u)` is a
 //! Hankel function of the second kind. `G(x,-t)` is the complex conjugate of `G(x,t)`.
 //!
-//! [`closed_form`] evaluates the Bessel functions by their series; [`momentum`] does the rapidity integral by
+//! `closed_form` evaluates the Bessel functions by their series; `momentum` does the rapidity integral by
 //! a trapezoid rule. They share the arithmetic and the factor in front of the integral.
 
 mod closed_form;
