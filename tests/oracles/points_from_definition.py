@@ -131,7 +131,7 @@ def half_line(inner, up, down, m, t, y, rule):
     omega = (lambda p: p) if m == 0 else (lambda p: (m * m + p * p).sqrt())
     wave = lambda p: (-I * omega(p) * t).exp()
     # Panels grow away from p = 0, near which omega has its branch points.
-    marks = [arb(0)] + [m * 2**k for k in range(20) if m and m * 2**k < 1] + [arb(1)]
+    marks = [arb(0)] + [m * 2**k for k in range(20) if size(m) and m * 2**k < 1] + [arb(1)]
     count = int(2 * size(y + t)) + 2
     total = sum(rule.straight(lambda p: inner(p) * wave(p), *ends, count) for ends in zip(marks, marks[1:]))
     fall = size(t - y) * 0.9 * float(arb(str(rule.angle)).sin().mid())
