@@ -34,6 +34,14 @@ pub enum Fault {
     ContourStripForgotten = 41,
     /// The sum of the contour route ends too early, without its cut-off error.
     ContourCutForgotten = 42,
+    /// The discretisation error on the contour of steepest descent is left out.
+    DescentErrorForgotten = 31,
+    /// The pole near the contour of steepest descent is forgotten.
+    DescentPoleForgotten = 32,
+    /// The series of the amplitude in powers of the interval is cut without a bound of the rest.
+    IntervalSeriesCut = 33,
+    /// Hankel functions of the wrong kind inside the cone of the propagator.
+    PropagatorBranch = 34,
 }
 
 #[cfg(feature = "spoil")]

@@ -116,7 +116,8 @@ pub fn read(path: &Path) -> Result<Vec<Entry>, Error> {
     if entries.is_empty() {
         return Err(Error::file("use", &shown, "it has no claims; write at least one [[claim]]"));
     }
-    let mut names: Vec<&str> = entries.iter().filter_map(|entry| entry.as_ref().ok()).map(|c| c.name.as_str()).collect();
+    let mut names: Vec<&str> =
+        entries.iter().filter_map(|entry| entry.as_ref().ok()).map(|c| c.name.as_str()).collect();
     names.sort_unstable();
     if let Some(pair) = names.windows(2).find(|pair| pair[0] == pair[1]) {
         return Err(Error::file("use", &shown, format!("the name \"{}\" is used twice; names must differ", pair[0])));
@@ -173,7 +174,8 @@ fn line_of(text: &str, byte: usize) -> usize {
 mod tests {
     use super::*;
 
-    const GOOD: &str = "\n[[claim]]\nname = \"a\"\npacket = { kind = \"box\", half-width = \"1\" }\ntime = 1\nsays = \"2%\"\n";
+    const GOOD: &str =
+        "\n[[claim]]\nname = \"a\"\npacket = { kind = \"box\", half-width = \"1\" }\ntime = 1\nsays = \"2%\"\n";
 
     #[test]
     fn one_bad_claim_stops_no_other() {
@@ -193,7 +195,8 @@ mod tests {
 
     #[test]
     fn json_has_the_same_members() {
-        let text = r#"{"claim": [{"name": "a", "packet": {"kind": "box", "half-width": "1"}, "time": 1, "says": "2%"}]}"#;
+        let text =
+            r#"{"claim": [{"name": "a", "packet": {"kind": "box", "half-width": "1"}, "time": 1, "says": "2%"}]}"#;
         assert_eq!(from_json(text).unwrap()[0].as_ref().unwrap().says, Text("2%".to_owned()));
         assert!(from_json("[1]").is_err() && from_toml("claim = 3").is_err());
     }

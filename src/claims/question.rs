@@ -59,8 +59,12 @@ impl Asked {
 /// [`Error::BadInput`] or [`Error::Missing`] naming the member that cannot be used.
 pub fn read(claim: &Claim) -> Result<Asked, Error> {
     let mass = number("mass", claim.mass.as_ref().map_or("1", |text| &text.0))?;
-    let parameters: BTreeMap<String, String> =
-        claim.packet.iter().filter(|(name, _)| *name != "kind").map(|(name, text)| (name.clone(), text.0.clone())).collect();
+    let parameters: BTreeMap<String, String> = claim
+        .packet
+        .iter()
+        .filter(|(name, _)| *name != "kind")
+        .map(|(name, text)| (name.clone(), text.0.clone()))
+        .collect();
     let kind = claim.packet.get("kind").map(|text| text.0.as_str());
     let kind = kind.ok_or_else(|| missing("packet", "write its kind, such as kind = \"box\""))?;
     let (side, beyond) = region(claim.region.as_deref().unwrap_or("beyond cone"))?;

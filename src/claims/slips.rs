@@ -48,7 +48,10 @@ fn arithmetic(asked: &Asked, result: &TailResult) -> Vec<(String, Option<Interva
     };
     let both = asked.question().inputs().get("side") == Some("both");
     let mut list = vec![
-        ("the absolute amplitude was given instead of the probability".to_owned(), Some(sqrt(&ball, BITS).to_interval(BITS))),
+        (
+            "the absolute amplitude was given instead of the probability".to_owned(),
+            Some(sqrt(&ball, BITS).to_interval(BITS)),
+        ),
         ("the square of the probability was given".to_owned(), Some(ball.square(BITS).to_interval(BITS))),
         ("percent were given without the sign".to_owned(), times(100, 1)),
         ("a fraction was written as percent".to_owned(), times(1, 100)),
@@ -86,7 +89,9 @@ fn changed_claims(claim: &Claim) -> Vec<(String, Claim)> {
         let largest = Claim { quantity: Some("largest over time".to_owned()), ..claim.clone() };
         list.push(("the largest value over all times was given".to_owned(), largest));
     }
-    for (slip, factor) in [("twice the time was used", Rational::from(2)), ("half the time was used", Rational::from((1, 2)))] {
+    for (slip, factor) in
+        [("twice the time was used", Rational::from(2)), ("half the time was used", Rational::from((1, 2)))]
+    {
         if let Some(time) = claim.time.as_ref().and_then(|text| scaled(&text.0, &factor)) {
             list.push((slip.to_owned(), Claim { time: Some(Text(time)), ..claim.clone() }));
         }

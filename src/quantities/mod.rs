@@ -1,16 +1,21 @@
 //! The quantities that can be asked for.
 //!
-//! * [`question`]: what all questions have in common.
-//! * [`tail`]: the probability of finding a packet beyond a distance outside its light cone.
-//! * [`catalogue`]: the packets that can be named.
+//! * [`question`]: what all questions about one probability have in common.
 //! * [`meeting`]: how the intervals of unrelated routes become one answer.
+//! * [`catalogue`]: the packets that can be named, each with its routes.
+//! * [`tail`]: the probability of finding a box at rest beyond a distance outside its light cone.
 //! * [`packet_tail`]: the same for any packet, with exact inputs.
 //! * [`peak`]: the largest tail over all times.
+//! * [`density`]: `|psi(x, t)|^2` and the amplitude at points, inside and outside the light cone.
+//! * [`propagator`]: the complex propagator `G(x, t)` in one, two and three dimensions.
 
 pub mod catalogue;
+pub mod density;
 pub mod meeting;
 pub mod packet_tail;
 pub mod peak;
+pub mod pointwise;
+pub mod propagator;
 pub mod question;
 pub mod tail;
 mod tail_range;

@@ -158,7 +158,7 @@ pub fn error(error: &Error) -> Result<String, Error> {
     line(&ErrorObject { status, field, was, wanted, message, routes, exit_code, program, version })
 }
 
-fn line(object: &impl Serialize) -> Result<String, Error> {
+pub(super) fn line(object: &impl Serialize) -> Result<String, Error> {
     let text = serde_json::to_string(object).map_err(|error| Error::Internal { found: error.to_string() })?;
     Ok(text + "\n")
 }

@@ -4,7 +4,9 @@
 //! bounds are rounded outward, and get as many digits as are needed for the decimal interval
 //! itself to satisfy `upper - lower <= 10^-digits * lower`. Certificates use the same strings.
 
+pub mod claims;
 pub mod json;
+pub mod points;
 pub mod text;
 
 use crate::arithmetic::{Interval, decimal, rounding};

@@ -133,7 +133,7 @@ fn route_lines(route: &RouteLine) -> String {
 
 /// One name with its content, continued under itself: a long number every [`CHUNK`] characters,
 /// sentences at blanks.
-fn entry(name: &str, content: &str) -> String {
+pub(super) fn entry(name: &str, content: &str) -> String {
     let lines = if content.contains(' ') { sentence_lines(content) } else { number_lines(content) };
     let labels = std::iter::once(name).chain(std::iter::repeat(""));
     labels.zip(lines).map(|(label, line)| format!("{label:<COLUMN$}{line}\n")).collect()
@@ -160,7 +160,7 @@ fn sentence_lines(content: &str) -> Vec<String> {
 }
 
 /// The text with its middle left out if it is longer than a line.
-fn shortened(text: &str) -> String {
+pub(super) fn shortened(text: &str) -> String {
     const HEAD: usize = 24;
     const TAIL: usize = 20;
     let characters: Vec<char> = text.chars().collect();
@@ -173,12 +173,12 @@ fn shortened(text: &str) -> String {
 }
 
 /// The text without control characters, which an input may contain as blanks.
-fn one_line(text: &str) -> String {
+pub(super) fn one_line(text: &str) -> String {
     text.chars().map(|character| if character.is_control() { ' ' } else { character }).collect()
 }
 
 /// Seconds in a unit that people read easily.
-fn duration(seconds: f64) -> String {
+pub(super) fn duration(seconds: f64) -> String {
     if seconds < 1e-3 {
         format!("{:.0} µs", seconds * 1e6)
     } else if seconds < 1.0 {

@@ -3,13 +3,17 @@
 //! A [`Route`] gets an exact [`TailProblem`] and a goal in digits and returns an enclosure with the
 //! data that an outsider needs to repeat it. Routes share the arithmetic and nothing else.
 
-pub mod cut;
 pub mod contour;
+pub mod cut;
+pub mod density;
+mod descent;
 mod estimate;
 pub mod gaussian;
 pub mod kernel;
-pub mod panels;
 pub mod lattice;
+pub mod panels;
+pub mod pointwise;
+pub mod propagator;
 pub mod spectral;
 
 use crate::arithmetic::{Bits, Interval};

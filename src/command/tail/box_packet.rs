@@ -1,6 +1,6 @@
 //! `coneproof tail box`.
 
-use super::{Answer, TailArguments, fields};
+use super::{Answer, TailArguments, fields, packets};
 use crate::error::Error;
 use crate::packets::BoxPacket;
 use crate::quantities::tail::TailRequest;
@@ -12,6 +12,9 @@ pub(super) struct BoxArguments {
     /// Half of the box's length, above 0
     #[arg(long, value_name = "A", allow_hyphen_values = true)]
     half_width: Option<String>,
+    /// Mean momentum k [default: 0]
+    #[arg(long, value_name = "K", allow_hyphen_values = true)]
+    momentum: Option<String>,
     #[command(flatten)]
     common: TailArguments,
 }
@@ -27,6 +30,7 @@ Examples:
   coneproof tail box --half-width 1 --time 1 --beyond 12 --certificate tail.json
   coneproof tail box --half-width 1 --time 1 --digits 1000 --time-limit 2.5 --format json
   coneproof tail box --half-width 1 --time 1 --scout
+  coneproof tail box --half-width 1/2 --momentum 2 --time 2 --digits 25
 
 ",
     exit_codes!(),
@@ -39,6 +43,9 @@ them alone."
 impl BoxArguments {
     /// The answer.
     pub(super) fn answer(&self) -> Result<Answer, Error> {
+        if self.momentum.is_some() {
+            return packets::moving_box(&self.half_width, &self.momentum, &self.common);
+        }
         let request = self.request()?;
         if self.common.scout { self.common.estimate(&request) } else { self.common.certify(&request) }
     }

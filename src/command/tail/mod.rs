@@ -1,8 +1,9 @@
 //! `coneproof tail PACKET`: the options that all packets share, and the answer.
 //!
-//! A further packet is one file beside [`box_packet`] and one line in [`PacketCommand`].
+//! A further packet has its options in [`packets`] and one line in [`PacketCommand`].
 
 mod box_packet;
+mod packets;
 
 use super::{Answer, fields};
 use crate::certificate::{self, Certificate};
@@ -36,6 +37,16 @@ pub(super) struct TailCommand {
 enum PacketCommand {
     /// Constant amplitude for |x| <= half-width, zero elsewhere
     Box(box_packet::BoxArguments),
+    /// Hard-wall eigenstate: cosine or sine for |x| <= half-width
+    Cosine(packets::CosineArguments),
+    /// B-spline on |x| <= half-width
+    Bspline(packets::BsplineArguments),
+    /// Uniform in a ball, three dimensions
+    Ball(packets::BallArguments),
+    /// Eigenstate of a spherical well, s-wave, three dimensions
+    Well(packets::WellArguments),
+    /// Gaussian, without an edge
+    Gaussian(packets::GaussianArguments),
 }
 
 /// Options of every packet.
@@ -57,7 +68,8 @@ struct TailArguments {
     /// Which side counts
     #[arg(long, value_enum, value_name = "SIDE", default_value = "both")]
     side: SideName,
-    /// Which of the unrelated computations runs, kernel or spectral; with both, their intervals must meet
+    /// Which of the unrelated computations runs (kernel or spectral for compact packets); with both, their intervals must
+    /// meet
     #[arg(long, value_name = "ROUTE", default_value = "both")]
     route: String,
     /// Largest working precision in bits, 64 to 20000000 [default: 4000000]
@@ -127,6 +139,11 @@ impl TailCommand {
     pub(super) fn answer(&self) -> Result<Answer, Error> {
         match &self.packet {
             PacketCommand::Box(arguments) => arguments.answer(),
+            PacketCommand::Cosine(arguments) => arguments.answer(),
+            PacketCommand::Bspline(arguments) => arguments.answer(),
+            PacketCommand::Ball(arguments) => arguments.answer(),
+            PacketCommand::Well(arguments) => arguments.answer(),
+            PacketCommand::Gaussian(arguments) => arguments.answer(),
         }
     }
 }

@@ -157,10 +157,10 @@ impl WavePacket {
             }
             list
         };
-        let waves = self.waves.iter().map(|wave| Wave {
-            number: wave.number.times(&inverse),
-            pieces: wave.pieces.iter().map(scale).collect(),
-        });
+        let waves = self
+            .waves
+            .iter()
+            .map(|wave| Wave { number: wave.number.times(&inverse), pieces: wave.pieces.iter().map(scale).collect() });
         WavePacket {
             waves: waves.collect(),
             knots: self.knots.iter().map(|knot| Rational::from(knot * factor)).collect(),
@@ -174,7 +174,10 @@ impl WavePacket {
             number: wave.number.neg(),
             pieces: wave.pieces.iter().zip(&lengths).rev().map(|(piece, length)| mirrored(piece, length)).collect(),
         });
-        WavePacket { waves: waves.collect(), knots: self.knots.iter().rev().map(|knot| Rational::from(-knot)).collect() }
+        WavePacket {
+            waves: waves.collect(),
+            knots: self.knots.iter().rev().map(|knot| Rational::from(-knot)).collect(),
+        }
     }
 
     /// The packet `conj psi0(x)`.

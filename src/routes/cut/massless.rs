@@ -237,7 +237,8 @@ impl Setting {
         let u = half.square(bits);
         let kappa = u.mul(&Real::from_rational(&self.unit, bits), bits);
         let time = Real::from_rational(&self.equivalent.time, bits);
-        let mut base = one_minus_exp(&time.mul(&u, bits).shift(1), bits, bits).div(&half, bits).shift(-1 - self.exponent);
+        let mut base =
+            one_minus_exp(&time.mul(&u, bits).shift(1), bits, bits).div(&half, bits).shift(-1 - self.exponent);
         if self.equivalent.distance != 0 {
             let distance = Real::from_rational(&self.equivalent.distance, bits);
             base = base.mul(&exp(&distance.mul(&u, bits).neg(), bits), bits);

@@ -99,7 +99,11 @@ impl CutTail {
     ) -> Result<CutTail, Error> {
         for (field, value) in [("mass", mass), ("distance", distance)] {
             if *value < 0 {
-                return Err(Error::bad_input(field, value, &format!("give a {field} that is not negative, such as 0 or 1")));
+                return Err(Error::bad_input(
+                    field,
+                    value,
+                    &format!("give a {field} that is not negative, such as 0 or 1"),
+                ));
             }
         }
         let massless = *mass == 0;
@@ -139,7 +143,8 @@ impl CutTail {
             total.nodes += found.nodes;
             total.unit = total.unit.max(found.unit);
             total.value = total.value.add(&found.value, total.bits);
-            let name = |text: &str| if self.sides.len() > 1 { format!("{text}, side {}", index + 1) } else { text.to_owned() };
+            let name =
+                |text: &str| if self.sides.len() > 1 { format!("{text}, side {}", index + 1) } else { text.to_owned() };
             total.witness.extend(found.witness.into_iter().map(|(text, value)| (name(text), value)));
         }
         if self.doubled {

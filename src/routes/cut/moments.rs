@@ -18,7 +18,11 @@ use crate::functions::complex_elementary::whole_plane;
 /// The moments `0..=degree`; `decay` is `exp(-c l)`.
 pub(super) fn moments(c: &Complex, length: &Real, decay: &Complex, degree: usize, bits: Bits) -> Vec<Complex> {
     let reach = c.re.to_f64().hypot(c.im.to_f64()) * length.to_f64();
-    if reach > degree as f64 + 2.0 { forward(c, length, decay, degree, bits) } else { backward(c, length, decay, degree, bits) }
+    if reach > degree as f64 + 2.0 {
+        forward(c, length, decay, degree, bits)
+    } else {
+        backward(c, length, decay, degree, bits)
+    }
 }
 
 fn forward(c: &Complex, length: &Real, decay: &Complex, degree: usize, bits: Bits) -> Vec<Complex> {

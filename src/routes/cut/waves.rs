@@ -137,7 +137,11 @@ impl PreparedWaves {
         let decay = |gap: &Real| {
             let exponent = gap.mul(kappa, self.bits);
             let small = exp_minus_upper(&exponent);
-            if small.cmp_value(negligible).is_lt() { Real::zero().widen(small) } else { exp(&exponent.neg(), self.bits) }
+            if small.cmp_value(negligible).is_lt() {
+                Real::zero().widen(small)
+            } else {
+                exp(&exponent.neg(), self.bits)
+            }
         };
         self.gaps.iter().map(decay).collect()
     }
@@ -331,11 +335,8 @@ fn integral(piece: &[ExactComplex], number: &WaveNumber, end: &Rational, length:
     let real_length = Real::from_rational(length, bits);
     let c = Complex::new(Real::zero(), wave_number(number, bits));
     let decay = phase(number, &Rational::from(-length), bits);
-    let list = if number.is_zero() {
-        powers(length, degree, bits)
-    } else {
-        moments(&c, &real_length, &decay, degree, bits)
-    };
+    let list =
+        if number.is_zero() { powers(length, degree, bits) } else { moments(&c, &real_length, &decay, degree, bits) };
     let mut sum = Complex::zero();
     for (coefficient, moment) in piece.iter().zip(list) {
         sum = sum.add(&exact(coefficient, bits).mul(&moment, bits), bits);
