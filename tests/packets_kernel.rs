@@ -1,7 +1,10 @@
 //! The kernel route for packets of polynomial pieces, against values from outside and against identities.
 //!
-//! `references/packets_from_definition.json` comes from `tests/oracles/packets_from_definition.py`, which starts at the definition of the
-//! evolution and shares no formula with the program; `references/check-values.json` names its methods value by value.
+//! `references/packets_from_definition.json` comes from `tests/oracles/packets_from_definition.py`, which starts at
+//! the definition of the evolution and shares no formula with the program; `references/check-values.json` names its
+//! methods value by value.
+
+#![allow(clippy::unwrap_used, clippy::panic, reason = "helpers of tests fail loudly")]
 
 use coneproof::arithmetic::{ExactInput, Interval};
 use coneproof::packets::piecewise::{ExactComplex, PiecewisePacket};
@@ -47,7 +50,7 @@ fn decimal_range(decimal: &str) -> (Rational, Rational) {
     let power = exponent.parse::<i32>().unwrap() - places;
     let unit = Rational::from(Integer::from(10).pow(power.unsigned_abs()));
     let unit = if power < 0 { unit.recip() } else { unit };
-    (Rational::from(&value - Rational::from(&unit / 2)), value + unit)
+    (&value - Rational::from(&unit / 2), value + unit)
 }
 
 fn meets(interval: &Interval, (low, high): &(Rational, Rational)) -> bool {
@@ -120,11 +123,12 @@ fn values_computed_elsewhere() {
     assert_eq!(seen, 12);
 }
 
-/// The hard-wall ground state against its Taylor polynomial: evolution and restriction to a region do not increase distances,
-/// so that the roots of the probabilities differ by at most the distance of the normalised packets.
+/// The hard-wall ground state against its Taylor polynomial: evolution and restriction to a region do not increase
+/// distances, so that the roots of the probabilities differ by at most the distance of the normalised packets.
 #[test]
 fn cosine_is_near_its_polynomial() {
-    // cos(pi x/2) with pi rounded to 20 decimals and the series cut at x^18; on |x| <= 1 the first term left out is below 4e-15.
+    // cos(pi x/2) with pi rounded to 20 decimals and the series cut at x^18; on |x| <= 1 the first term left out is
+    // below 4e-15.
     let b = number("1.57079632679489661923");
     let mut coefficients = Vec::new();
     let mut term = q(1, 1);
@@ -135,7 +139,8 @@ fn cosine_is_near_its_polynomial() {
         }
         term = term * &b / (n + 1);
     }
-    // The pieces begin at their left knot, so take the two halves: x from 0 to 1, and its mirror image in powers of x + 1.
+    // The pieces begin at their left knot, so take the two halves: x from 0 to 1, and its mirror image in powers of x
+    // + 1.
     let right: Vec<Rational> = coefficients.clone();
     let mut left = coefficients;
     for start in 0..left.len() {
@@ -243,8 +248,8 @@ proptest! {
         }
     }
 
-    /// Only ratios matter; the place, the sign of the time and a common factor do not; sides add up and change places when
-    /// the packet is reflected.
+    /// Only ratios matter; the place, the sign of the time and a common factor do not; sides add up and change places
+    /// when the packet is reflected.
     #[test]
     fn symmetries(packet in packet(), t in log_uniform(-2.0, 2.0), unit in log_uniform(-2.0, 2.0), shift in small_fraction()) {
         let one = q(1, 1);

@@ -1,7 +1,10 @@
-//! The proofs for piecewise packets can fail: a forgotten tail is noticed by a containment check that passes without it.
+//! The proofs for piecewise packets can fail: a forgotten tail is noticed by a containment check that passes without
+//! it.
 //!
-//! Run with `cargo test --features spoil --test spoil_packets`. One fault at a time, in one test, because the switch is global.
+//! Run with `cargo test --features spoil --test spoil_packets`. One fault at a time, in one test, because the switch
+//! is global.
 #![cfg(feature = "spoil")]
+#![allow(clippy::unwrap_used, clippy::panic, reason = "helpers of tests fail loudly")]
 
 use coneproof::arithmetic::Interval;
 use coneproof::packets::PiecewisePacket;

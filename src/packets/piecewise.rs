@@ -13,8 +13,8 @@
 //! | [`PiecewisePacket::cosine`] | eigenstates of the interval with hard walls |
 //! | [`PiecewisePacket::with_momentum`] | any of the first three, moving |
 //!
-//! A spherically symmetric amplitude `psi(r)` in three dimensions evolves as the odd amplitude `u(x) = x psi(|x|)` on the
-//! line does, and `4 pi r^2 |psi|^2` is twice `2 pi |u|^2`: after normalisation, `P(r > R)` is `P(|x| > R)`.
+//! A spherically symmetric amplitude `psi(r)` in three dimensions evolves as the odd amplitude `u(x) = x psi(|x|)` on
+//! the line does, and `4 pi r^2 |psi|^2` is twice `2 pi |u|^2`: after normalisation, `P(r > R)` is `P(|x| > R)`.
 
 use crate::error::Error;
 use rug::{Integer, Rational};
@@ -187,7 +187,8 @@ impl PiecewisePacket {
     }
 
     /// A spherically symmetric packet in three dimensions: `psi(r) = sum_n pieces[i][n] (r - radii[i])^n` between
-    /// `radii[i]` and `radii[i+1]`, zero beyond the last radius. It is kept as the odd packet `x psi(|x|)` on the line.
+    /// `radii[i]` and `radii[i+1]`, zero beyond the last radius. It is kept as the odd packet `x psi(|x|)` on the
+    /// line.
     ///
     /// # Errors
     /// As [`PiecewisePacket::complex`]; the first radius must be 0.

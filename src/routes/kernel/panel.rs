@@ -134,8 +134,8 @@ impl PanelSeries {
     }
 }
 
-/// `half * g` about `v = time + s` in powers of `(v - time - s)/half`: coefficients in units of `2^-scale` and the bound of the
-/// sum of their errors, truncation included. `bound` bounds `g` at `v = time + s`; as for `F`,
+/// `half * g` about `v = time + s` in powers of `(v - time - s)/half`: coefficients in units of `2^-scale` and the
+/// bound of the sum of their errors, truncation included. `bound` bounds `g` at `v = time + s`; as for `F`,
 /// `|g_n| <= g(v_c - rho' w) rho'^-n`.
 pub(in crate::routes) fn kernel_series(
     place: (&Rational, &Rational, &Rational),

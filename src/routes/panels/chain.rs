@@ -1,16 +1,17 @@
 //! `Q` on one panel from all its knots, and the constants of integration handed to the next panel.
 //!
-//! On a panel `s = s_c + h x` put `Phi~_j = Phi_j / h^(j-1)`; then `Phi~_(j+1) = Int_x^1 Phi~_j` plus its value at the right end, a
-//! division for each coefficient. `Phi~_1 = F e^(-i kappa v)` needs no constant besides that of `F`. Each knot hands `F` and
-//! `Phi_2, Phi_3, ...` at the left end of its panel to the next one. With the weights
+//! On a panel `s = s_c + h x` put `Phi~_j = Phi_j / h^(j-1)`; then `Phi~_(j+1) = Int_x^1 Phi~_j` plus its value at
+//! the right end, a division for each coefficient. `Phi~_1 = F e^(-i kappa v)` needs no constant besides that of `F`.
+//! Each knot hands `F` and `Phi_2, Phi_3, ...` at the left end of its panel to the next one. With the weights
 //!
 //! ```text
-//! W_kj = (-1)^j h^j c_kj,    Q = Sum W_kj Phi~_(j+1)(x - y_k) + kappa Sum V_kj Phi~_(j+1)(x - y_k),    V_kj = (-1)^j h^j i c_k(j-1),
+//! W_kj = (-1)^j h^j c_kj,    V_kj = (-1)^j h^j i c_k(j-1),
+//! Q = Sum W_kj Phi~_(j+1)(x - y_k) + kappa Sum V_kj Phi~_(j+1)(x - y_k),
 //! ```
 //!
-//! exact over a common denominator, a component of `Q` is off by at most `Sum |W| error` (absolute values of both parts added)
-//! and one unit for each coefficient. At the cone the outermost knot carries `2 t F` instead of `F`, and its weights
-//! are divided by `2 t`.
+//! exact over a common denominator, a component of `Q` is off by at most `Sum |W| error` (absolute values of both
+//! parts added) and one unit for each coefficient. At the cone the outermost knot carries `2 t F` instead of `F`, and
+//! its weights are divided by `2 t`.
 
 use super::Side;
 use super::expansion::{ComplexList, Expansion, Factor, add_weighted};

@@ -6,18 +6,19 @@
 //! |component of f(x) - A(x) - B(x) ln x| <= error * (1 + |ln x|),
 //! ```
 //!
-//! for the real and the imaginary component separately: on `0 < x <= 1` at the cone, and on `|x| <= 1` with `B = 0` and
-//! without the logarithm in the bound elsewhere. Coefficients are integers in units of `2^-scale`. The size of a list is the sum of
-//! the absolute values of its coefficients; it bounds the polynomial.
+//! for the real and the imaginary component separately: on `0 < x <= 1` at the cone, and on `|x| <= 1` with `B = 0`
+//! and without the logarithm in the bound elsewhere. Coefficients are integers in units of `2^-scale`. The size of a
+//! list is the sum of the absolute values of its coefficients; it bounds the polynomial.
 //!
 //! **Integration** (`f -> Int_x^1 f`, anchored at `x = 1` by a known value). The computed polynomials are integrated
-//! term by term: `n B'_n = -B_(n-1)`, `n A'_n = -A_(n-1) - B'_n`, with fewer than two units of rounding in `A'_n` and one
-//! in `B'_n`. The error of `f` contributes `Int_x^1 error (1 + |ln|) <= 2 error`, and so does a constant error on a panel of
-//! length two. The roundings contribute at most `2 + 2` units for each `A'_n` (at `x` and at 1) and one for each `B'_n`,
-//! as `x^n |ln x| < 1` for `n >= 1`; five units for each index cover both.
+//! term by term: `n B'_n = -B_(n-1)`, `n A'_n = -A_(n-1) - B'_n`, with fewer than two units of rounding in `A'_n` and
+//! one in `B'_n`. The error of `f` contributes `Int_x^1 error (1 + |ln|) <= 2 error`, and so does a constant error on
+//! a panel of length two. The roundings contribute at most `2 + 2` units for each `A'_n` (at `x` and at 1) and one
+//! for each `B'_n`, as `x^n |ln x| < 1` for `n >= 1`; five units for each index cover both.
 //!
-//! **Product** with a series `E` that is off by `e` in each component: a component of the product is the sum of two real
-//! products, off by at most `(|A.re| + |A.im|) e + (|E.re| + |E.im|) error + 2 e error`, and a unit for each coefficient.
+//! **Product** with a series `E` that is off by `e` in each component: a component of the product is the sum of two
+//! real products, off by at most `(|A.re| + |A.im|) e + (|E.re| + |E.im|) error + 2 e error`, and a unit for each
+//! coefficient.
 
 use crate::arithmetic::{Complex, Magnitude, Real};
 use crate::routes::RouteFailure;

@@ -1,7 +1,8 @@
 //! `Q` on panels farther away than the packet's own size: one Taylor series of the kernel and the packet's moments.
 //!
-//! With `z` the distance to the left of the packet's middle, `Q(s) = Int g(t + s + a + z) psi0 dz`, up to a phase. Let the panel be `s = s_c + w x`, and
-//! `g = (1/W) Sum_n G_n ((v - v_c)/W)^n` about `v_c = t + s_c + a` with `W = w + a`. As `v - v_c = w x + z`, by the binomial theorem
+//! With `z` the distance to the left of the packet's middle, `Q(s) = Int g(t + s + a + z) psi0 dz`, up to a phase.
+//! Let the panel be `s = s_c + w x`, and `g = (1/W) Sum_n G_n ((v - v_c)/W)^n` about `v_c = t + s_c + a` with
+//! `W = w + a`. As `v - v_c = w x + z`, by the binomial theorem
 //!
 //! ```text
 //! Q = Sum_m alpha^m x^m Sum_k C(m+k, k) G_(m+k) nu_k,    alpha = w/W,    nu_k = M_k/W^(k+1) = (a/W)^(k+1) M~_k.
@@ -9,10 +10,11 @@
 //!
 //! No constant of integration is needed, and nothing cancels but what cancels in the moments themselves.
 //!
-//! **Error.** `|w x + z| <= W`, so an error `e` of the series of `W g` (sum over coefficients, truncation included) changes `Q` by at most
-//! `e Int |psi0| / W`. An error `epsilon` of every component of every `nu_k`, including those set to zero, changes it by at most
-//! `epsilon Sum_n |G_n| Sum_k C(n, k) alpha^(n-k) = epsilon Sum_n |G_n| (1 + alpha)^n`. The powers `alpha^m` in fixed point are off by at
-//! most `m` of their units, and the products are cut once.
+//! **Error.** `|w x + z| <= W`, so an error `e` of the series of `W g` (sum over coefficients, truncation included)
+//! changes `Q` by at most `e Int |psi0| / W`. An error `epsilon` of every component of every `nu_k`, including those
+//! set to zero, changes it by at most
+//! `epsilon Sum_n |G_n| Sum_k C(n, k) alpha^(n-k) = epsilon Sum_n |G_n| (1 + alpha)^n`. The powers `alpha^m` in fixed
+//! point are off by at most `m` of their units, and the products are cut once.
 
 use super::Side;
 use super::expansion::{ComplexList, Expansion, size};
@@ -36,7 +38,7 @@ pub(super) fn on_panel(
     let reach = Rational::from(&half + a);
     let centre = panel.centre() + a;
     let place = (&side.time, &centre, &reach);
-    let (kernel, kernel_error) = kernel_series(place, panel.scale, panel.terms, super::kernel_bound, effort)?;
+    let (kernel, kernel_error) = kernel_series(place, panel.scale, panel.terms, super::bounds::kernel_bound, effort)?;
     let scaled = ScaledMoments::new(moments, &Rational::from(a / &reach), panel)?;
     let sums = correlation(&kernel, &scaled.list, effort)?;
     let alpha = half / &reach;

@@ -1,7 +1,8 @@
 //! Moments of the packet, for regions farther away than its own size.
 //!
-//! With `z = y_c - y` the distance to the left of the middle, `M_k = Int z^k psi0 dz = a^(k+1) M~_k`. For polynomial pieces, by the
-//! differences `E_ki` of the coefficients left and right of each knot (those of `(y/a)^i`, with `eta_k = y_k/a`),
+//! With `z = y_c - y` the distance to the left of the middle, `M_k = Int z^k psi0 dz = a^(k+1) M~_k`. For polynomial
+//! pieces, by the differences `E_ki` of the coefficients left and right of each knot (those of `(y/a)^i`, with
+//! `eta_k = y_k/a`),
 //!
 //! ```text
 //! m~_l = a^(-l-1) Int y^l p(y) dy = Sum_k Sum_i E_ki eta_k^(l+i+1)/(l+i+1),
@@ -11,9 +12,10 @@
 //! for a wave `e^(i kappa y)`; cosine and sine keep the even and the odd `j`. As `|y| <= a`, both are at most
 //! `B = (2 N'/a)^(1/2)` with `N' = Int |p|^2`.
 //!
-//! **Rounding.** `eta^n` in fixed point is off by at most `n` units (each step rounds once and multiplies by `|eta| <= 1`), which the division
-//! by `n` takes back: `m~_l` is off by at most `Sum |E|` units, one for each term and one for the common denominator. The factors
-//! `omega_j = (kappa a)^j/j!` are balls; those beyond `J >= 2 kappa a` sum to at most `2 omega_J`.
+//! **Rounding.** `eta^n` in fixed point is off by at most `n` units (each step rounds once and multiplies by
+//! `|eta| <= 1`), which the division by `n` takes back: `m~_l` is off by at most `Sum |E|` units, one for each term
+//! and one for the common denominator. The factors `omega_j = (kappa a)^j/j!` are balls; those beyond
+//! `J >= 2 kappa a` sum to at most `2 omega_J`.
 
 use super::expansion::ComplexList;
 use super::shape::Shape;

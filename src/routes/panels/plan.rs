@@ -1,9 +1,9 @@
 //! Panels, numbers of terms and precisions, chosen in double precision. Nothing here decides containment.
 //!
-//! An error `e` of `Q` on a region of length `L` changes `I = Int |Q|^2` by about `2 e sqrt(L I)` (Cauchy and Schwarz), which
-//! fixes the accuracy wanted of `Q`. An error of `F` on a panel enters `Q` there and, through the iterated integrals, everywhere
-//! nearer to the cone with the weight `sum |c_kj| s^j` at most: for `s` much larger than the packet this is the
-//! cancellation between the knots, and it is paid for with bits.
+//! An error `e` of `Q` on a region of length `L` changes `I = Int |Q|^2` by about `2 e sqrt(L I)` (Cauchy and
+//! Schwarz), which fixes the accuracy wanted of `Q`. An error of `F` on a panel enters `Q` there and, through the
+//! iterated integrals, everywhere nearer to the cone with the weight `sum |c_kj| s^j` at most: for `s` much larger
+//! than the packet this is the cancellation between the knots, and it is paid for with bits.
 
 use super::Side;
 use super::profile::Profile;
@@ -69,8 +69,8 @@ pub(super) struct Plan {
     pub cone: Option<Panel>,
     /// From the cone outward, treated knot by knot.
     pub panels: Vec<Panel>,
-    /// For each knot, panels beyond these on which its constants are carried in from the point that the last knot reaches. Used
-    /// when there are far panels; otherwise constants come from the far end.
+    /// For each knot, panels beyond these on which its constants are carried in from the point that the last knot
+    /// reaches. Used when there are far panels; otherwise constants come from the far end.
     pub extensions: Vec<Vec<Panel>>,
     /// Beyond, treated by moments.
     pub far: Vec<FarPanel>,
@@ -186,7 +186,8 @@ impl Planner<'_> {
         (2.0 * width).max(0.5 * width * ((self.goal + 10.0) / most).min(300.0).exp())
     }
 
-    /// Growing panels from `start` until the rest is negligible: those treated knot by knot, and those treated by moments.
+    /// Growing panels from `start` until the rest is negligible: those treated knot by knot, and those treated by
+    /// moments.
     fn panels(&self, start: &Rational) -> Result<(Vec<Panel>, Vec<FarPanel>), RouteFailure> {
         let origin = proper_distance(self.profile.t, self.profile.d);
         let (mut near, mut far): (Vec<Panel>, Vec<FarPanel>) = (Vec::new(), Vec::new());
@@ -215,8 +216,8 @@ impl Planner<'_> {
         }
     }
 
-    /// The end of a panel from `from`: at most at `last` (given with the point itself in double precision), at most `stride`
-    /// in `r` and `widest` in length.
+    /// The end of a panel from `from`: at most at `last` (given with the point itself in double precision), at most
+    /// `stride` in `r` and `widest` in length.
     fn advance(
         &self,
         from: &Rational,

@@ -11,11 +11,13 @@
 //! `Gamma_(j+1) = Int_v^inf Gamma_j`, repeated integration by parts of every piece gives
 //!
 //! ```text
-//! Q(x) = Sum_k Sum_j (-1)^j c_kj Gamma_(j+1)(x - y_k) = Sum_k Sum_j (-1)^j (c_kj + i kappa c_k(j-1)) Phi_(j+1)(x - y_k).
+//! Q(x) = Sum_k Sum_j (-1)^j c_kj Gamma_(j+1)(x - y_k)
+//!      = Sum_k Sum_j (-1)^j (c_kj + i kappa c_k(j-1)) Phi_(j+1)(x - y_k).
 //! ```
 //!
 //! Only `|psi|^2` counts, so the phase `e^(i kappa x)` is left out, except for a standing wave, which is real:
-//! `cos(b y) = Re e^(i b y)` and `sin(b y) = Re(-i e^(i b y))` with `g` real, hence the same real parts of `e^(i b x) Q(x)`.
+//! `cos(b y) = Re e^(i b y)` and `sin(b y) = Re(-i e^(i b y))` with `g` real, hence the same real parts of
+//! `e^(i b x) Q(x)`.
 
 use crate::packets::piecewise::{Carrier, ExactComplex, PiecewisePacket, expanded_about};
 use rug::Rational;
@@ -80,8 +82,8 @@ impl Shape {
         Shape { knots: self.knots.iter().rev().map(knot).collect(), carrier, ..self.clone() }
     }
 
-    /// Whether both sides have the same tail for a visible reason: `psi0(-y)` is `psi0(y)` or its conjugate, up to sign.
-    /// The kernel is imaginary and even, so that each of these gives `|psi(-x)| = |psi(x)|`.
+    /// Whether both sides have the same tail for a visible reason: `psi0(-y)` is `psi0(y)` or its conjugate, up to
+    /// sign. The kernel is imaginary and even, so that each of these gives `|psi(-x)| = |psi(x)|`.
     pub(super) fn is_symmetric(&self) -> bool {
         let other = self.reflected();
         let same = |negate: bool, conjugate: bool| {

@@ -1,7 +1,8 @@
 //! `Int |Q|^2` over a panel.
 //!
 //! If a component of `Q` is the computed `P`, bounded by `c`, up to an error `e`, its square is off by at most
-//! `e (2 c + e)`; over a panel of length two that is twice as much, and at the cone `Int_0^1 (1 + |ln y|)^2 dy = 5` times as much.
+//! `e (2 c + e)`; over a panel of length two that is twice as much, and at the cone `Int_0^1 (1 + |ln y|)^2 dy = 5`
+//! times as much.
 
 use super::expansion::Expansion;
 use crate::arithmetic::{Bits, Magnitude, Real};

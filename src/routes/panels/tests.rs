@@ -1,9 +1,10 @@
 //! Each error bound by itself: a panel is computed with one thing made coarse, and compared with a fine one.
 //!
-//! The deviation has to stay within the bound, and to exceed what the bound would be if the coarse thing were forgotten in it: so
-//! each of these tests fails without the part of the bound that it is about.
+//! The deviation has to stay within the bound, and to exceed what the bound would be if the coarse thing were
+//! forgotten in it: so each of these tests fails without the part of the bound that it is about.
 
 use super::expansion::Expansion;
+use super::near::{all_series, at_common_point, at_cone, at_far_end, on_panel};
 use super::*;
 use crate::functions::elementary::ln;
 use rug::Integer;

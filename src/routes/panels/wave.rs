@@ -1,9 +1,10 @@
 //! Power series of `exp(i (theta_0 + theta_1 x))` on `|x| <= 1`.
 //!
-//! The coefficients `(i theta_1)^n/n!` are computed as balls, whose radii are summed; each is real or imaginary. From `N >= 2 |theta_1|` on
-//! each is at most half of the one before, so that those left out sum to at most twice the first of them. The constant phase is
-//! multiplied in afterwards: with `cos theta_0` and `sin theta_0` off by `delta`, a component of the product is off by at most
-//! `(2 + 2 delta) e + (|re| + |im|) delta` and one unit for each coefficient.
+//! The coefficients `(i theta_1)^n/n!` are computed as balls, whose radii are summed; each is real or imaginary. From
+//! `N >= 2 |theta_1|` on each is at most half of the one before, so that those left out sum to at most twice the
+//! first of them. The constant phase is multiplied in afterwards: with `cos theta_0` and `sin theta_0` off by
+//! `delta`, a component of the product is off by at most `(2 + 2 delta) e + (|re| + |im|) delta` and one unit for
+//! each coefficient.
 
 use super::expansion::{ComplexList, Factor};
 use crate::arithmetic::{Magnitude, Real};
