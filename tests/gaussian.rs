@@ -3,6 +3,7 @@
 //! `references/gaussian_from_definition.json` comes from `tests/oracles/gaussian_from_definition.py`, which integrates
 //! the definition and shares no formula with the program; `references/check-values.json` names its methods value by
 //! value.
+#![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
 
 use coneproof::arithmetic::{ExactInput, Interval, Real};
 use coneproof::error::Error;
