@@ -3,11 +3,15 @@
 //! `references/gaussian_from_definition.json` comes from `tests/oracles/gaussian_from_definition.py`, which integrates
 //! the definition and shares no formula with the program; `references/check-values.json` names its methods value by
 //! value.
+#![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
 
 use coneproof::arithmetic::{ExactInput, Interval, Real};
 use coneproof::error::Error;
 use coneproof::functions::erfc::erfc;
 use coneproof::packets::GaussianPacket;
+use coneproof::quantities::packet_tail::PacketTail;
+use coneproof::quantities::question::Question;
+use coneproof::quantities::tail::{Side, Status};
 use coneproof::routes::contour::Contour;
 use coneproof::routes::gaussian::{AtRelease, GaussianProblem, Region};
 use coneproof::routes::lattice::Lattice;
@@ -97,7 +101,7 @@ fn check_values() {
         for way in &ways {
             match enclosure(way.as_ref(), digits + 2) {
                 Some(found) => assert!(meet(&found, &expected), "{id}, {}: {found:?}", way.name()),
-                None => assert!(id == "A0_1/10_20" && way.name() != "closed form", "{id}: {} declines", way.name()),
+                None => assert!(id == "A0_1/10_20" && way.name() != "closed-form", "{id}: {} declines", way.name()),
             }
         }
         met += 1;
@@ -379,6 +383,31 @@ fn limits_are_kept() {
         let asked = problem(&read(sigma), &Rational::new(), &read(time), region(0, &read("2")));
         let declined = Lattice::new(asked).evaluate(15, &Effort::default());
         assert!(matches!(declined, Err(RouteFailure::OutOfReach { .. })), "{declined:?}");
+    }
+}
+
+/// The request that serves all packets.
+#[test]
+fn asked_like_any_other_packet() {
+    let ask = |sigma: &str, momentum: &str, time: &str, beyond: Option<&str>, side| {
+        let packet = GaussianPacket::new(sigma.parse().unwrap()).unwrap().with_momentum(momentum.parse().unwrap());
+        let mut request = PacketTail::new(Box::new(packet), "1".parse().unwrap(), time.parse().unwrap());
+        request.beyond = beyond.map(|text| text.parse().unwrap());
+        request.side = side;
+        request.certify()
+    };
+    let found = ask("1/2", "0", "1", Some("2"), Side::Both).unwrap();
+    assert_eq!((found.status, found.routes.len()), (Status::Certified, 2));
+    assert!(meet(&found.interval, &around("0.0120482089973415846945", 20)));
+    let (right, left) = (ask("1/2", "1", "2", Some("3"), Side::Right), ask("1/2", "1", "2", Some("3"), Side::Left));
+    let both = ask("1/2", "1", "2", Some("3"), Side::Both).unwrap().interval;
+    assert!(meet(&both, &sum(&right.unwrap().interval, &left.unwrap().interval)));
+    let released = ask("1/2", "1", "0", Some("2"), Side::Both).unwrap();
+    assert_eq!((released.status, released.routes.len()), (Status::Certified, 3));
+    assert!(matches!(ask("1/2", "0", "1", None, Side::Both), Err(Error::Missing { field, .. }) if field == "beyond"));
+    for (sigma, momentum, wrong) in [("[1, 2]", "0", "sigma"), ("1", "[0, 1]", "momentum")] {
+        let refused = ask(sigma, momentum, "1", Some("2"), Side::Both);
+        assert!(matches!(refused, Err(Error::BadInput { field, .. }) if field == wrong));
     }
 }
 

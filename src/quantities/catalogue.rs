@@ -7,10 +7,9 @@ use super::packet_tail::{ExactTail, TailPacket};
 use super::tail::Side;
 use crate::arithmetic::ExactInput;
 use crate::error::Error;
-use crate::packets::{PiecewisePacket, WavePacket};
+use crate::packets::{GaussianPacket, PiecewisePacket, WavePacket};
 use crate::routes::Evaluation;
 use crate::routes::cut::{CutSide, CutTail};
-use crate::routes::gaussian::{GaussianProblem, Region};
 use crate::routes::panels::{PiecewiseKernel, Sides};
 use rug::Rational;
 use std::collections::BTreeMap;
@@ -207,44 +206,11 @@ fn well(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
     }))
 }
 
-/// The Gaussian packet.
-#[derive(Debug)]
-struct Gaussian {
-    parameters: Vec<(&'static str, String)>,
-    sigma: Rational,
-    momentum: Rational,
-}
-
-impl TailPacket for Gaussian {
-    fn kind(&self) -> &'static str {
-        "gaussian"
-    }
-
-    fn parameters(&self) -> Vec<(&'static str, String)> {
-        self.parameters.clone()
-    }
-
-    fn edge(&self) -> Option<Rational> {
-        None
-    }
-
-    fn routes(&self, problem: &ExactTail) -> Result<Vec<Box<dyn Evaluation>>, Error> {
-        let beyond = problem.beyond.clone();
-        let region = match problem.side {
-            Side::Both => Region::Outside(beyond),
-            Side::Right => Region::RightOf(beyond),
-            Side::Left => Region::LeftOf(-beyond),
-        };
-        let exact = GaussianProblem::new(&self.sigma, &self.momentum, &problem.mass, &problem.time, &region)?;
-        Ok(exact.evaluations())
-    }
-}
-
 fn gaussian(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
-    let (sigma, momentum) = (given.number("sigma", "1")?, given.number("momentum", "0")?);
-    if sigma <= 0 {
-        let wanted = "give a standard deviation of |psi0|^2 above 0, such as 1/2";
-        return Err(Error::bad_input("sigma", given.text("sigma", ""), wanted));
-    }
-    Ok(Box::new(Gaussian { parameters: given.shown(&["sigma", "momentum"]), sigma, momentum }))
+    let exact = |name: &str, default: &str| -> Result<ExactInput, Error> {
+        given.number(name, default)?;
+        let text = given.text(name, default);
+        text.parse().map_err(|error: crate::arithmetic::exact::NotANumber| Error::bad_input(name, text, &error.wanted))
+    };
+    Ok(Box::new(GaussianPacket::new(exact("sigma", "1")?)?.with_momentum(exact("momentum", "0")?)))
 }

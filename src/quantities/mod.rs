@@ -5,12 +5,14 @@
 //! * [`catalogue`]: the packets that can be named, each with its routes.
 //! * [`tail`]: the probability of finding a box at rest beyond a distance outside its light cone.
 //! * [`packet_tail`]: the same for any packet, with exact inputs.
+//! * `gaussian_tail`: what the gaussian packet says to that.
 //! * [`peak`]: the largest tail over all times.
 //! * [`density`]: `|psi(x, t)|^2` and the amplitude at points, inside and outside the light cone.
 //! * [`propagator`]: the complex propagator `G(x, t)` in one, two and three dimensions.
 
 pub mod catalogue;
 pub mod density;
+mod gaussian_tail;
 pub mod meeting;
 pub mod packet_tail;
 pub mod peak;

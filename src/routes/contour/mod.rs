@@ -12,7 +12,7 @@
 //! ```
 //!
 //! No position integral and no cancellation from "one minus" is left. `I` becomes a double trapezoid sum with
-//! step `h` ([`double_sum`]). All other regions follow: `x < -R` is `x > R` for `-k`, the rest are sums and complements.
+//! step `h` (`double_sum`). All other regions follow: `x < -R` is `x > R` for `-k`, the rest are sums and complements.
 //!
 //! # Bounds
 //!

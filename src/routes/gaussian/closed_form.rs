@@ -48,7 +48,7 @@ impl AtRelease {
 
 impl Evaluation for AtRelease {
     fn name(&self) -> &'static str {
-        "closed form"
+        "closed-form"
     }
 
     fn method(&self) -> &'static str {

@@ -14,7 +14,7 @@
 //! P_h(W) = (h^2 / 2 pi) Sum_n R_n W_n,   R_n = Sum_j Phi(p_{j+n}) conj Phi(p_j),   W_n = Int_W exp(i n h x) dx,
 //! ```
 //!
-//! with the autocorrelation `R_n` of the samples from one product of big integers ([`window`]).
+//! with the autocorrelation `R_n` of the samples from one product of big integers (`window`).
 //!
 //! # How far `P_h(W)` is from `P(W)`
 //!

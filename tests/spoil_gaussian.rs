@@ -2,6 +2,7 @@
 //!
 //! Run with `cargo test --features spoil --test gaussian_spoil`. One test, because the switch is global.
 #![cfg(feature = "spoil")]
+#![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
 
 use coneproof::arithmetic::{ExactInput, Interval};
 use coneproof::routes::contour::Contour;
