@@ -361,7 +361,8 @@ pub(super) fn run_routes(
         RouteChoice::Both => vec![&kernel::KERNEL, &spectral::SPECTRAL],
     };
     if below_arithmetic(problem) {
-        let reports = chosen.iter().map(|route| RouteReport::idle(route.name(), route.method(), BELOW_ARITHMETIC));
+        let reports =
+            chosen.iter().map(|route| RouteReport::idle(route.name(), route.method(problem), BELOW_ARITHMETIC));
         return Ok((without_routes(problem), reports.collect()));
     }
     let bound: Vec<Bound> = chosen.into_iter().map(|route| Bound { route, problem }).collect();

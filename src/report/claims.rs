@@ -11,7 +11,7 @@ use std::fmt::Write;
 #[derive(Serialize)]
 struct Run<'a> {
     claims: Vec<ClaimObject<'a>>,
-    summary: Vec<(&'a str, usize)>,
+    summary: serde_json::Map<String, serde_json::Value>,
     caution: &'a str,
     program: &'a str,
     version: &'a str,
@@ -75,7 +75,7 @@ pub fn json(judgements: &[Judgement]) -> Result<String, Error> {
     });
     let run = Run {
         claims: claims.collect(),
-        summary: counted(judgements),
+        summary: counted(judgements).into_iter().map(|(name, count)| (name.to_owned(), count.into())).collect(),
         caution: CAUTION,
         program: PROGRAM,
         version: VERSION,

@@ -111,7 +111,7 @@ pub trait Route: Sync {
     fn name(&self) -> &'static str;
 
     /// One sentence on the method, for certificates.
-    fn method(&self) -> &'static str;
+    fn method(&self, problem: &TailProblem) -> &'static str;
 
     /// An enclosure aiming at a relative width of `10^-digits`; the width is the caller's to check.
     ///
@@ -152,7 +152,7 @@ impl Evaluation for Bound<'_> {
     }
 
     fn method(&self) -> &'static str {
-        self.route.method()
+        self.route.method(self.problem)
     }
 
     fn evaluate(&self, digits: u32, effort: &Effort) -> Result<RouteOutcome, RouteFailure> {

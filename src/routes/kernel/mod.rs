@@ -73,8 +73,12 @@ impl Route for Kernel {
         "kernel"
     }
 
-    fn method(&self) -> &'static str {
-        "Newton-Wigner propagator in position space, Taylor panels by recurrence, logarithmic series at the cone"
+    fn method(&self, problem: &TailProblem) -> &'static str {
+        if problem.massless {
+            "Newton-Wigner propagator in position space, closed form with the dilogarithm"
+        } else {
+            "Newton-Wigner propagator in position space, Taylor panels by recurrence, logarithmic series at the cone"
+        }
     }
 
     fn evaluate(&self, problem: &TailProblem, digits: u32, effort: &Effort) -> Result<RouteOutcome, RouteFailure> {

@@ -11,6 +11,8 @@ use std::f64::consts::{LN_2, LN_10, PI};
 
 /// More panels than this are refused.
 const MAX_PANELS: usize = 400;
+/// More series coefficients than this are refused.
+const MAX_TERMS: usize = 20_000_000;
 
 /// An ordinary panel, `s = v - t` from `from` to `to`.
 pub(super) struct PanelPlan {
@@ -96,7 +98,7 @@ impl Sizes {
             (log / ratio.ln()).max(1.0)
         };
         let best = best_ratio(widest, cost);
-        cost(best).ceil() as usize + 1
+        cost(best).ceil().min(1e9) as usize + 1
     }
 }
 
@@ -144,6 +146,9 @@ impl Plan {
         plan.bits = plan.panels.iter().map(|p| p.scale).fold(edge_scale, u32::max);
         // Sums are taken as balls; relative accuracy is what counts there.
         plan.bits = plan.bits.max((goal / LN_2) as u32 + 40);
+        if plan.terms() > MAX_TERMS {
+            return Err(refused("the kernel route would need too many terms"));
+        }
         Ok(plan)
     }
 

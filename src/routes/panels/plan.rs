@@ -278,7 +278,7 @@ impl Planner<'_> {
             let left = self.log_kernel(centre - ratio * reach) + reach.ln() - (1.0 - 1.0 / ratio).ln();
             ((left + 1.0 - accuracy) / ratio.ln()).max(1.0)
         };
-        let terms = cost(best_ratio(centre / reach, cost)).ceil() as usize + 1;
+        let terms = cost(best_ratio(centre / reach, cost)).ceil().min(1e9) as usize + 1;
         let bits = |accuracy: f64| (-accuracy / LN_2).max(0.0);
         let scale = bits(accuracy - self.sizes.growth(centre, reach)) + (terms as f64).log2() + 7.0;
         // Sum |G_n| (1 + alpha)^n = W g(v_c - W - w), as the signs of G_n alternate.

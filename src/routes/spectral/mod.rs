@@ -90,7 +90,7 @@ impl Route for Spectral {
         "spectral"
     }
 
-    fn method(&self) -> &'static str {
+    fn method(&self, _problem: &TailProblem) -> &'static str {
         "trapezoid rule on the branch cut of the momentum integral, double sum over the rapidity nodes k h"
     }
 
