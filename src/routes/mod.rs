@@ -105,6 +105,8 @@ impl std::fmt::Display for RouteFailure {
     }
 }
 
+impl std::error::Error for RouteFailure {}
+
 /// One way from a problem to an enclosure.
 pub trait Route: Sync {
     /// Name on the command line and in certificates.
