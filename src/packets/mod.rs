@@ -3,6 +3,8 @@
 //! One file for each kind; a packet knows its shape in exact numbers and its name, and nothing of
 //! how probabilities are computed.
 
+pub mod boosted_box;
 pub mod box_packet;
 
+pub use boosted_box::{Boost, BoostedBox};
 pub use box_packet::BoxPacket;

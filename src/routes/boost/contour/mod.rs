@@ -1,0 +1,6 @@
+//! stub
+use super::BoostProblem;
+/// stub
+pub struct Contour;
+/// stub
+pub struct Complement;
