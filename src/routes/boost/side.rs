@@ -36,7 +36,7 @@ pub(super) enum Factor {
 }
 
 impl Factor {
-    fn value(self, boost: &Boost, bits: Bits) -> Real {
+    pub(super) fn value(self, boost: &Boost, bits: Bits) -> Real {
         let bits = bits + 8;
         let (growth, excess) = boost.growth(bits);
         match self {

@@ -8,7 +8,7 @@
 //!   additions of partial sums, each partial sum being bounded by the sum of absolute values: together at most
 //!   `2 (2n + 8) 2^-p B^2/2` for `n < 2^20`, `p >= 32`, the factor two covering the higher orders. Numbers below
 //!   MPFR's range (`2^-(2^62)`) are flushed to zero, which `2^-(2^40)` covers.
-//! * Weights with radii `r_i`: at most `B R + R^2/2` with `R = Sum r_i/sqrt(K_i)`.
+//! * Weights with radii `r_i`, or dropped as `|W_i| <= r_i`: at most `B R + R^2/2` with `R = Sum r_i/sqrt(K_i)`.
 //! * Positions with relative radii at most `e <= 1/4`: each quotient changes by at most the factor `1/(1 - e) - 1 <= 2e`,
 //!   so at most `e B^2`.
 
@@ -20,6 +20,19 @@ use rug::{Assign, Float};
 
 /// The sum as a ball.
 pub(super) fn cauchy(nodes: &[Node], bits: Bits, effort: &Effort) -> Result<Real, RouteFailure> {
+    let (sizes, whole) = sizes(nodes);
+    // A node this small counts as a ball around zero.
+    let least = whole.shift(-i64::from(bits) - 4);
+    let mut kept = Vec::with_capacity(nodes.len());
+    let mut dropped = Magnitude::ZERO;
+    for (node, size) in nodes.iter().zip(&sizes) {
+        if size.cmp_value(least).is_gt() {
+            kept.push(node);
+        } else {
+            dropped = dropped.add(*size);
+        }
+    }
+    let nodes = kept.as_slice();
     let rows: Vec<Float> = (0..nodes.len())
         .into_par_iter()
         .map(|index| {
@@ -31,13 +44,13 @@ pub(super) fn cauchy(nodes: &[Node], bits: Bits, effort: &Effort) -> Result<Real
     for value in &rows {
         total += value;
     }
-    Ok(Real::from_float(total).widen(error(nodes, bits)))
+    Ok(Real::from_float(total).widen(error(nodes, whole, dropped, bits)))
 }
 
 /// `W_i (W_i/(2 K_i) + 2 Sum_{j<i} W_j/(K_i + K_j))`, rounded.
-fn row(nodes: &[Node], index: usize, bits: Bits) -> Float {
+fn row(nodes: &[&Node], index: usize, bits: Bits) -> Float {
     let mut inner = Float::new(bits);
-    let Some((node, before)) = nodes.get(..=index).and_then(<[Node]>::split_last) else {
+    let Some((node, before)) = nodes.get(..=index).and_then(<[&Node]>::split_last) else {
         return inner;
     };
     let position = node.position.midpoint();
@@ -56,13 +69,22 @@ fn row(nodes: &[Node], index: usize, bits: Bits) -> Float {
     inner
 }
 
-/// The bound derived above.
-fn error(nodes: &[Node], bits: Bits) -> Magnitude {
-    let (mut whole, mut spread, mut position) = (Magnitude::ZERO, Magnitude::ZERO, Magnitude::ZERO);
+/// `|W_i|/sqrt(K_i)` and their sum, from above.
+fn sizes(nodes: &[Node]) -> (Vec<Magnitude>, Magnitude) {
+    let sizes: Vec<Magnitude> = nodes.iter().map(|node| node.weight.abs_upper().div(root_below(node))).collect();
+    let whole = sizes.iter().fold(Magnitude::ZERO, |sum, size| sum.add(*size));
+    (sizes, whole)
+}
+
+fn root_below(node: &Node) -> Magnitude {
+    Magnitude::from_float_down(&rounding::down(64, node.position.lower(64).sqrt_ref()))
+}
+
+/// The bound derived above; `dropped` counts like radii.
+fn error(nodes: &[&Node], whole: Magnitude, dropped: Magnitude, bits: Bits) -> Magnitude {
+    let (mut spread, mut position) = (dropped, Magnitude::ZERO);
     for node in nodes {
-        let below = Magnitude::from_float_down(&rounding::down(64, node.position.lower(64).sqrt_ref()));
-        whole = whole.add(node.weight.abs_upper().div(below));
-        spread = spread.add(node.weight.radius().div(below));
+        spread = spread.add(node.weight.radius().div(root_below(node)));
         position = position.max(node.position.radius().div(node.position.abs_lower()));
     }
     let quarter = Magnitude::power_of_two(-2);
