@@ -40,7 +40,7 @@ use rug::Rational;
 const BITS: Bits = 64;
 
 /// Cells between the borders of a tilted line.
-const CELLS: i64 = 16;
+const CELLS: i64 = 12;
 
 /// The curve.
 #[derive(Clone, Debug, PartialEq, Eq)]

@@ -77,9 +77,9 @@ fn outside(part: i64) -> Line {
 /// Tilted lines of several strips and centres.
 fn tilted(place: &Place) -> impl Iterator<Item = Line> {
     let theta = place.frame.growth.to_f64().ln();
-    let strips = [8i64, 16, 24, 32, 36, 40];
+    let strips = [12i64, 24, 32, 38];
     strips.into_iter().flat_map(move |part| {
-        [0.0, 0.5, 1.0, 1.5, 2.0, 3.0, 4.0, 6.0].into_iter().map(move |extra| {
+        [0.0, 0.6, 1.5, 3.0, 5.0].into_iter().map(move |extra| {
             let (alpha, delta) = (25.0 / 32.0, part as f64 / 64.0);
             let border = dyadic(((alpha + delta) / (2.0 * alpha)).atanh(), 12);
             let centre = dyadic_signed(extra + 0.4 - theta + alpha * delta.tan() + border.to_f64());
