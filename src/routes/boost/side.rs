@@ -42,9 +42,7 @@ impl Factor {
         match self {
             Factor::Growth => growth,
             Factor::Decay => Real::from_i64(1).div(&growth, bits),
-            Factor::Sinh => {
-                excess.mul(&growth.add(&Real::from_i64(1), bits), bits).div(&growth.shift(1), bits)
-            }
+            Factor::Sinh => excess.mul(&growth.add(&Real::from_i64(1), bits), bits).div(&growth.shift(1), bits),
         }
     }
 
@@ -79,16 +77,14 @@ pub(super) fn length(
     boost: &Boost,
     bits: Bits,
 ) -> Result<Real, RouteFailure> {
-    let product_sign = factor.sign(boost).then(Ordering::Equal);
+    let product_sign = factor.sign(boost);
     let opposed = r.cmp0() == combine(s.cmp0(), product_sign).reverse();
     if opposed {
         if r.cmp0() == Ordering::Equal {
             return Ok(Real::zero());
         }
-        if let Some(square) = factor.square(boost) {
-            if Rational::from(r * r) == Rational::from(s * s) * square {
-                return Ok(Real::zero());
-            }
+        if factor.square(boost).is_some_and(|square| Rational::from(r * r) == Rational::from(s * s) * square) {
+            return Ok(Real::zero());
         }
     }
     let mut precision = bits + 16;

@@ -37,6 +37,7 @@ mod line;
 mod piece;
 mod plan;
 mod sum;
+mod tilted;
 
 use super::cut::join;
 use super::side::Side;
@@ -184,12 +185,7 @@ fn evaluate_piece(piece: &Piece, side: &Side, digits: u32, effort: &Effort) -> R
     Ok(RouteOutcome { interval, bits, nodes: nodes.len(), witness })
 }
 
-fn witness(
-    plan: &Plan,
-    discretisation: Magnitude,
-    cut: Magnitude,
-    sum: &Interval,
-) -> Vec<(String, String)> {
+fn witness(plan: &Plan, discretisation: Magnitude, cut: Magnitude, sum: &Interval) -> Vec<(String, String)> {
     let mut list: Vec<(String, String)> = plan.lines.iter().map(line::Line::describe).collect();
     list.push(("discretisation bound, L2".to_owned(), decimal::upper_decimal(&discretisation.to_float(), 4)));
     list.push(("cut-off bound".to_owned(), decimal::upper_decimal(&cut.to_float(), 4)));

@@ -261,9 +261,6 @@ fn contracted(side: &Side, a: &Real, bits: Bits) -> End {
     let position = a.div(&cosh, bits);
     End {
         minus: Pair { x: scaled.mul(&growth, bits).neg(), back: scaled.mul(&decay, bits) },
-        plus: Pair {
-            x: position.add(&a.mul(&growth, bits), bits),
-            back: position.add(&a.mul(&decay, bits), bits),
-        },
+        plus: Pair { x: position.add(&a.mul(&growth, bits), bits), back: position.add(&a.mul(&decay, bits), bits) },
     }
 }

@@ -41,7 +41,7 @@ impl Plan {
         let [from, to] = place.ends();
         let waves = (1.0 + size(from).max(size(to))).log2();
         let bits = (2.0 * constants - goals.square) / LN_2 + 3.0 * (nodes as f64).log2() + waves + 16.0;
-        if !(bits < 1e7) {
+        if bits.is_nan() || bits >= 1e7 {
             return Err(out_of_reach("the lines off the cut would need too many bits"));
         }
         Ok(Plan { bits: bits.ceil().max(64.0) as Bits, lines })

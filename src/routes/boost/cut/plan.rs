@@ -36,7 +36,7 @@ impl Plan {
         let (outer_first, outer_last) = rough.outer_ends(goal, step);
         let (inner_first, inner_last) = rough.inner_ends(goal, step);
         let nodes = (outer_last - outer_first).max(inner_last - inner_first);
-        if !(nodes < MOST_NODES) {
+        if nodes.is_nan() || nodes >= MOST_NODES {
             return Err(out_of_reach("the route on the cut would need more than 60000 nodes"));
         }
         let lost = (whole * whole / size).max(1.0).log2() + (1.0 + rough.e).log2() + 2.0 * (nodes + 2.0).log2();
