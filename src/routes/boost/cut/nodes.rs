@@ -52,7 +52,13 @@ fn gap(u: &Real, v: &Real, x: &Real, bits: Bits) -> Real {
 }
 
 fn fall(gap: &Real, position: &Real, half_width: &Real, bits: Bits) -> Real {
-    let growth = exp_m1(&position.mul(half_width, bits).shift(1).neg(), bits).neg();
+    let exponent = position.mul(half_width, bits).shift(1).neg();
+    // Far out the exponential is tiny, and so is its spread: a difference from one keeps that, `exp_m1` does not.
+    let growth = if exponent.to_f64() < -1.0 {
+        Real::from_i64(1).sub(&exp(&exponent, bits), bits)
+    } else {
+        exp_m1(&exponent, bits).neg()
+    };
     exp(&gap.square(bits).neg(), bits).mul(&growth, bits).div(position, bits)
 }
 
