@@ -3,6 +3,7 @@
 //! A [`Route`] gets an exact [`TailProblem`] and a goal in digits and returns an enclosure with the
 //! data that an outsider needs to repeat it. Routes share the arithmetic and nothing else.
 
+pub mod boost;
 pub mod contour;
 pub mod cut;
 pub mod density;
