@@ -61,7 +61,8 @@ fn heading(words: &str, inputs: &Inputs) -> String {
     // How an answer is computed is said elsewhere.
     const ELSEWHERE: [&str; 4] = ["digits", "route", "max_bits", "time_limit"];
     for (name, read) in inputs.iter().filter(|(name, _)| !ELSEWHERE.contains(name)) {
-        let explained = match (name, read, inputs.get("half_width")) {
+        let at_rest = inputs.get("rapidity").or(inputs.get("boost_velocity")).is_none();
+        let explained = match (name, read, inputs.get("half_width").filter(|_| at_rest)) {
             ("beyond", "cone", Some(_)) => "cone (a + |t|)",
             _ => read,
         };

@@ -3,6 +3,7 @@
 use super::{Answer, TailArguments, fields, packets};
 use crate::error::Error;
 use crate::packets::BoxPacket;
+use crate::quantities::boosted_tail::observer;
 use crate::quantities::tail::TailRequest;
 use clap::Args;
 
@@ -15,6 +16,12 @@ pub(super) struct BoxArguments {
     /// Mean momentum k [default: 0]
     #[arg(long, value_name = "K", allow_hyphen_values = true)]
     momentum: Option<String>,
+    /// Rapidity of a moving observer, whose time and region are meant; the region may also be "contracted"
+    #[arg(long, value_name = "THETA", allow_hyphen_values = true)]
+    rapidity: Option<String>,
+    /// Velocity of a moving observer as a fraction of c, instead of the rapidity
+    #[arg(long, value_name = "V", allow_hyphen_values = true)]
+    boost_velocity: Option<String>,
     #[command(flatten)]
     common: TailArguments,
 }
@@ -31,6 +38,7 @@ Examples:
   coneproof tail box --half-width 1 --time 1 --digits 1000 --time-limit 2.5 --format json
   coneproof tail box --half-width 1 --time 1 --scout
   coneproof tail box --half-width 1/2 --momentum 2 --time 2 --digits 25
+  coneproof tail box --half-width 5 --rapidity 1/2 --time 0 --beyond 5
 
 ",
     exit_codes!(),
@@ -43,11 +51,29 @@ them alone."
 impl BoxArguments {
     /// The answer.
     pub(super) fn answer(&self) -> Result<Answer, Error> {
+        if self.rapidity.is_some() || self.boost_velocity.is_some() {
+            return self.for_observer();
+        }
         if self.momentum.is_some() {
             return packets::moving_box(&self.half_width, &self.momentum, &self.common);
         }
         let request = self.request()?;
         if self.common.scout { self.common.estimate(&request) } else { self.common.certify(&request) }
+    }
+
+    /// The answer for a moving observer.
+    fn for_observer(&self) -> Result<Answer, Error> {
+        if let Some(momentum) = &self.momentum {
+            let wanted = "a moving observer of a moving packet is not offered; leave one of the two out";
+            return Err(Error::bad_input("momentum", momentum, wanted));
+        }
+        let read = |field: &str, text: &Option<String>| text.as_deref().map(|t| fields::exact(field, t)).transpose();
+        let (rapidity, velocity) = (read("rapidity", &self.rapidity)?, read("boost-velocity", &self.boost_velocity)?);
+        let Some((boost, boost_read)) = observer(rapidity.as_ref(), velocity.as_ref())? else {
+            return Err(Error::Internal { found: "an observer without a boost".to_owned() });
+        };
+        let half_width = fields::required("half-width", self.half_width.as_deref(), "--half-width 1")?;
+        self.common.answer_for_observer(half_width, boost, boost_read)
     }
 
     /// The request, with every field checked.

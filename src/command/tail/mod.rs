@@ -6,8 +6,11 @@ mod box_packet;
 mod packets;
 
 use super::{Answer, fields};
+use crate::arithmetic::ExactInput;
 use crate::certificate::{self, Certificate};
 use crate::error::{EXIT_CERTIFIED, EXIT_FEWER_DIGITS, Error};
+use crate::packets::Boost;
+use crate::quantities::boosted_tail::BoostedTail;
 use crate::quantities::packet_tail::{PacketTail, TailPacket};
 use crate::quantities::question::Question;
 use crate::quantities::tail::{Side, Status, TailRequest, TailResult};
@@ -183,6 +186,37 @@ impl TailArguments {
             return Err(Error::bad_input("scout", packet.kind(), wanted));
         }
         self.certify(&self.request(packet)?)
+    }
+
+    /// The answer for a moving observer of the box.
+    fn answer_for_observer(
+        &self,
+        half_width: ExactInput,
+        boost: Boost,
+        boost_read: (&'static str, String),
+    ) -> Result<Answer, Error> {
+        if self.scout {
+            let wanted = "the quick estimate knows the box at rest only; leave the option out";
+            return Err(Error::bad_input("scout", "box", wanted));
+        }
+        if !matches!(self.side, SideName::Both) {
+            let wanted = "for a moving observer both sides count together; leave the option out";
+            return Err(Error::bad_input("side", self.side.side().name(), wanted));
+        }
+        let request = BoostedTail {
+            half_width,
+            mass: fields::exact("mass", &self.mass)?,
+            boost,
+            boost_read,
+            time: fields::required("time", self.time.as_deref(), "--time 0")?,
+            region: fields::boosted_region(&self.beyond)?,
+            digits: fields::digits(&self.digits)?,
+            route: self.route.clone(),
+            max_bits: self.max_bits.as_deref().map(fields::max_bits).transpose()?,
+            time_limit: self.time_limit.as_deref().map(fields::time_limit).transpose()?,
+        };
+        request.validate()?;
+        self.certify(&request)
     }
 
     /// Computes, reports, writes the certificate.
