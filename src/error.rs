@@ -77,6 +77,8 @@ fn printable(text: &str) -> String {
 
 /// The answer is certified to the digits asked.
 pub const EXIT_CERTIFIED: u8 = 0;
+/// A claim is refuted (`check` only).
+pub const EXIT_REFUTED: u8 = 1;
 /// The request cannot be used, or a file cannot be written.
 pub const EXIT_BAD_INPUT: u8 = 2;
 /// The interval is certified, but narrower digits were asked than could be reached.

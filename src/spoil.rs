@@ -24,8 +24,24 @@ pub enum Fault {
     BesselSeriesCut = 7,
     /// The power series of the dilogarithm is cut too early, without its tail bound.
     DilogarithmSeriesCut = 8,
+    /// What lies beyond the last panel of a piecewise packet is left out.
+    PiecewiseTailForgotten = 10,
     /// The spectral sum of a general packet is cut too early, without the bound of what lies beyond the last node.
     CutOffForgotten = 9,
+    /// The distance of the lattice sum from the integral is left out.
+    LatticeErrorForgotten = 40,
+    /// The discretisation error of the contour route is left out.
+    ContourStripForgotten = 41,
+    /// The sum of the contour route ends too early, without its cut-off error.
+    ContourCutForgotten = 42,
+    /// The discretisation error on the contour of steepest descent is left out.
+    DescentErrorForgotten = 31,
+    /// The pole near the contour of steepest descent is forgotten.
+    DescentPoleForgotten = 32,
+    /// The series of the amplitude in powers of the interval is cut without a bound of the rest.
+    IntervalSeriesCut = 33,
+    /// Hankel functions of the wrong kind inside the cone of the propagator.
+    PropagatorBranch = 34,
 }
 
 #[cfg(feature = "spoil")]

@@ -1,6 +1,5 @@
 //! The K functions: independent methods against each other, identities, tables, balls.
-
-#![allow(clippy::unwrap_used)]
+#![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
 
 use coneproof::arithmetic::{Bits, Complex, ExactInput, Magnitude, Real};
 use coneproof::functions::bessel_k::{self, Method};
@@ -50,10 +49,47 @@ proptest! {
         prop_assert!(value.accuracy_estimate() >= f64::from(bits) - 1.0);
         prop_assert!(contains(&value, &bessel_k::k_by(Method::Series, order, &x, bits + 60)));
         prop_assert!(contains(&value, &bessel_k::k_by(Method::Trapezoid, order, &x, bits + 60)));
+        let short = bessel_k::k_by(Method::ShortSeries, order, &x, bits);
+        prop_assert!(!short.is_bounded() || contains(&short, &bessel_k::k_by(Method::Series, order, &x, bits + 60)));
         let asymptotic = bessel_k::k_by(Method::Asymptotic, order, &x, bits);
         let long = bessel_k::k(order, &x, bits + 60);
         prop_assert!(!asymptotic.is_bounded() || contains(&asymptotic, &long));
         prop_assert!(asymptotic.is_bounded() || ln_size < 0.0);
+    }
+
+    // The words' series against general integers and, not too slow there, the trapezoid rule.
+    #[test]
+    fn short_series(
+        order in 0u32..3, ln_size in -690.0f64..3.6, far: bool, mantissa_bits in 2u32..300, bits in 10u32..520
+    ) {
+        // Half of the arguments where the series has many terms, with mantissas of all lengths.
+        let ln_size = if far || ln_size > 0.0 { ln_size } else { 3.6 + ln_size / 150.0 };
+        let size = Rational::from_f64(ln_size.exp()).unwrap() * Rational::from((7, 5));
+        let x = Real::from_float(Float::with_val(mantissa_bits, &size));
+        let value = bessel_k::k_by(Method::ShortSeries, order, &x, bits);
+        // Order two asks for a few bits more.
+        let fits = x.to_f64() < 31.9 && f64::from(bits) + 2.886 * x.to_f64() + 11.0 <= 500.0;
+        prop_assert!(value.is_bounded() || !fits);
+        if value.is_bounded() {
+            prop_assert!(value.accuracy_estimate() >= f64::from(bits) - 1.0);
+            prop_assert!(contains(&value, &bessel_k::k_by(Method::Series, order, &x, bits + 60)));
+            prop_assert!(contains(&value, &bessel_k::k_by(Method::Trapezoid, order, &x, bits + 60)));
+        }
+    }
+
+    // Squares of any length: short ones are divided as words, long ones rounded to a fraction.
+    #[test]
+    fn roots_of_long_fractions(p in 1u128.., q in 1u128.., cut in 0u32..128, power in 0u32..3, bits in 10u32..450) {
+        let (p, q) = (Integer::from(p) * (p >> 100 | 1), Integer::from((q >> cut).max(1)));
+        let square = (Rational::from((p, q)) >> (28 - cut.min(28)) >> 110u32) * Rational::from((3, 7u32.pow(power)));
+        let root = coneproof::functions::elementary::sqrt(&Real::from_rational(&square, bits + 200), bits + 200);
+        let (k0, over_r) = bessel_k::k0_k1_of_square(&square, bits);
+        let long = |order| bessel_k::k_by(Method::Series, order, &root, bits + 60);
+        if root.to_f64() < 1000.0 {
+            prop_assert!(contains(&k0, &long(0)));
+            prop_assert!(contains(&over_r, &long(1).div(&root, bits + 60)));
+        }
+        prop_assert!(k0.accuracy_estimate().min(over_r.accuracy_estimate()) >= f64::from(bits) - 1.0);
     }
 
     #[test]

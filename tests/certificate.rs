@@ -74,7 +74,7 @@ fn content_changes_the_hash_and_layout_does_not() {
     for change in [
         |c: &mut Certificate| c.lower.push('1'),
         |c: &mut Certificate| c.digits += 1,
-        |c: &mut Certificate| c.inputs.mass = "2".to_owned(),
+        |c: &mut Certificate| c.inputs.set("mass", "2"),
         |c: &mut Certificate| c.routes[0].witness[0].value.push('1'),
         |c: &mut Certificate| c.routes.swap(0, 1),
         |c: &mut Certificate| c.value = None,
@@ -99,6 +99,16 @@ fn documents_of_another_shape_are_refused() {
         let mut shorter = value.clone();
         shorter.as_object_mut().unwrap().remove(name);
         assert!(Certificate::from_json(&shorter.to_string()).is_err(), "without {name}");
+    }
+    for name in ["note", "witness"] {
+        let mut shorter = value.clone();
+        shorter["routes"][0].as_object_mut().unwrap().remove(name);
+        assert!(Certificate::from_json(&shorter.to_string()).is_err(), "a route without {name}");
+        // Even with a hash that fits.
+        shorter.as_object_mut().unwrap().remove("sha256");
+        let digest: String = Sha256::digest(canonical(&shorter)).iter().map(|byte| format!("{byte:02x}")).collect();
+        shorter["sha256"] = digest.into();
+        assert!(Certificate::from_json(&shorter.to_string()).is_err(), "a route without {name}");
     }
     // A forger who computes the hash anew is still held to the order of the bounds.
     let mut forged = certificate("1", "1", None);

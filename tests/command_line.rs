@@ -1,7 +1,7 @@
 //! The command line as a user meets it: answers, refusals, exit codes, and output that cannot be written.
 //!
 //! Snapshots mask what depends on the machine or on a route's plan: times, bits, nodes, and digits
-//! beyond the seventeenth.
+//! beyond the fourteenth.
 
 #![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
 
@@ -39,15 +39,15 @@ fn masked(answer: &str) -> String {
     answer.lines().map(line).collect::<Vec<_>>().join("\n")
 }
 
-/// A decimal with at most 17 significant digits, the others as one sign.
+/// A decimal with at most 14 significant digits, the others as one sign.
 fn short(word: &str) -> String {
     let (body, exponent) = word.split_once('e').map_or((word, None), |(body, exponent)| (body, Some(exponent)));
     let digits = body.chars().filter(char::is_ascii_digit).collect::<String>();
     let leading = digits.len() - digits.trim_start_matches('0').len();
-    if digits.len() - leading <= 17 || !body.chars().all(|c| c.is_ascii_digit() || c == '.') {
+    if digits.len() - leading <= 14 || !body.chars().all(|c| c.is_ascii_digit() || c == '.') {
         return word.to_owned();
     }
-    let kept = body.chars().take(leading + 17 + 1).collect::<String>();
+    let kept = body.chars().take(leading + 14 + 1).collect::<String>();
     format!("{kept}…{}", exponent.map_or(String::new(), |e| format!("e{e}")))
 }
 
@@ -75,7 +75,7 @@ fn assert_valid(validator: &jsonschema::Validator, document: &Value) {
     assert!(errors.is_empty(), "{errors:?} in {document}");
 }
 
-const ANSWERS: [&str; 11] = [
+const ANSWERS: [&str; 13] = [
     "--half-width 1 --time 1",
     "--half-width 1 --time 1 --digits 30 --side left",
     "--half-width 1/2 --mass 3 --time -2.5 --route kernel",
@@ -87,6 +87,8 @@ const ANSWERS: [&str; 11] = [
     "--half-width '[0.99,1.01]' --time 1",
     "--half-width '[0.99,1.01]' --time '[-1,2]' --mass '[0.5,1]' --beyond '[5,6]'",
     "--half-width 1 --time 1 --time-limit 1e-9",
+    "--half-width '[1,3]' --time '[0,1000]' --route kernel",
+    "--half-width 1 --time 1 --beyond 1e9",
 ];
 
 #[test]
@@ -117,6 +119,7 @@ fn json_answers_fit_the_schema_and_themselves() {
         let answer = json(&output);
         assert_valid(&result, &answer);
         let (lower, upper) = (exact(answer["lower"].as_str().unwrap()), exact(answer["upper"].as_str().unwrap()));
+        assert!(lower <= upper && upper <= 1, "{args}: no probability");
         let digits = answer["digits"].as_u64().unwrap() as u32;
         let width = Rational::from(&upper - &lower) * Rational::from(Integer::from(Integer::u_pow_u(10, digits)));
         assert!(digits == 0 || width <= lower, "{args}: the decimals do not have {digits} digits");
@@ -178,6 +181,44 @@ fn intervals_of_inputs_contain_their_points() {
             assert!(whole.0 <= point.0 && point.1 <= whole.1, "{region} {a} {m} {t}");
         }
     }
+}
+
+#[test]
+fn narrow_intervals_of_inputs_keep_the_digits() {
+    let output = tail("--half-width '[1,1.00000000000000000000000000000000000000001]' --time 1 --digits 40");
+    assert!(text(&output.stdout).contains("certified: 40 relative digits"));
+    // The leading digits of the value in references/box_tail_from_definition.json.
+    assert!(text(&output.stdout).contains("0.021375190842329457328581717564495"));
+}
+
+#[test]
+fn every_route_gets_its_share_of_the_time() {
+    // Two and a half thousand digits take seconds, fifteen take milliseconds.
+    let answer = json(&tail("--half-width 1 --time 1 --digits 2500 --time-limit 1 --format json"));
+    for route in answer["routes"].as_array().unwrap() {
+        assert!(route["lower"].is_string(), "{route}");
+        assert_eq!(route["note"], "the time limit was reached");
+    }
+    assert!(answer["seconds"].as_f64().unwrap() < 60.0);
+}
+
+#[test]
+fn a_limit_on_bits_is_used_up() {
+    let answer = json(&tail("--half-width 1 --time 1 --digits 100 --max-bits 200 --format json"));
+    for route in answer["routes"].as_array().unwrap() {
+        let bits = route["bits"].as_u64().unwrap();
+        assert!((180..=200).contains(&bits), "{route}");
+    }
+}
+
+#[test]
+fn a_route_that_would_fill_the_memory_says_so() {
+    let output = tail("--half-width 1 --time 1 --beyond 1e7 --format json");
+    let answer = json(&output);
+    let routes = answer["routes"].as_array().unwrap();
+    assert!(routes[0]["lower"].is_null() && routes[0]["note"].as_str().unwrap().contains("bits would be needed"));
+    assert!(routes[1]["lower"].is_string());
+    assert_eq!((output.status.code(), &answer["status"]), (Some(0), &"certified".into()));
 }
 
 #[test]

@@ -45,8 +45,9 @@ const FIELDS: [&str; 11] =
 /// Numbers as people write them, over the whole range and beyond it, and nearly numbers.
 fn number() -> impl Strategy<Value = String> {
     let plain = (-99i32..999, -12i32..12).prop_map(|(mantissa, exponent)| format!("{mantissa}e{exponent}"));
-    let extreme = (0i32..99, -40_000i32..40_000).prop_map(|(mantissa, exponent)| format!("{mantissa}e{exponent}"));
-    let large = (1i32..99, -310i32..310).prop_map(|(mantissa, exponent)| format!("{mantissa}e{exponent}"));
+    let extreme = (0i32..99, 1_000i32..40_000, "-?")
+        .prop_map(|(mantissa, exponent, sign)| format!("{mantissa}e{sign}{exponent}"));
+    let large = (1i32..99, -1_000i32..1_000).prop_map(|(mantissa, exponent)| format!("{mantissa}e{exponent}"));
     let fraction = (-9i32..99, 0i32..99).prop_map(|(above, below)| format!("{above}/{below}"));
     let single = prop_oneof![4 => plain, 1 => extreme, 2 => large, 2 => fraction];
     let interval = (single.clone(), single.clone()).prop_map(|(low, high)| format!("[{low}, {high}]"));

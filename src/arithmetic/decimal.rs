@@ -96,7 +96,7 @@ fn try_digits(interval: &Interval, digits: u32) -> Option<GuaranteedDecimal> {
     let (unit, _) = directed_values(&format!("1e{unit_exponent}"), bits)?;
     // Directed rounding makes the differences larger and the unit smaller than they are.
     let fits =
-        rounding::up(bits, interval.upper() - below) < unit && rounding::up(bits, above - interval.lower()) < unit;
+        rounding::up(bits, interval.upper() - &below) < unit && rounding::up(bits, &above - interval.lower()) < unit;
     fits.then(|| GuaranteedDecimal { text: layout(negative, &text, exponent), digits })
 }
 

@@ -4,7 +4,7 @@
 //! infinity. Every operation returns a value that is **at least** the exact result (relative
 //! excess at most `2^-30`), unless its name ends in `_down`, when it is at most the exact result.
 //! Exponents saturate far outside what MPFR can represent: too large becomes infinity, too small
-//! becomes the smallest positive magnitude (or zero for `_down`).
+//! becomes the smallest positive magnitude; for `_down`, the largest finite one and zero.
 
 use rug::Float;
 use std::cmp::Ordering;
@@ -99,7 +99,14 @@ impl Magnitude {
         let shift = 32 - i64::from(value.leading_zeros());
         let mantissa = if shift <= 0 { value << -shift } else { value >> shift };
         let exponent = exponent.saturating_add(shift);
-        if exponent < -EXPONENT_LIMIT { Magnitude::ZERO } else { Magnitude::saturate(mantissa as u32, exponent) }
+        if exponent < -EXPONENT_LIMIT {
+            Magnitude::ZERO
+        } else if exponent > EXPONENT_LIMIT {
+            // Infinity would not be a lower bound of a finite number.
+            Magnitude { mantissa: u32::MAX, exponent: EXPONENT_LIMIT }
+        } else {
+            Magnitude { mantissa: mantissa as u32, exponent }
+        }
     }
 
     /// Whether this is exactly zero.
@@ -162,11 +169,14 @@ impl Magnitude {
 
     /// Lower bound of `self - other`, zero if that is negative; `self` must be a lower bound.
     pub fn sub_down(self, other: Magnitude) -> Magnitude {
-        if self.is_infinite() || other.is_zero() {
+        if other.is_zero() {
             return self;
         }
         if other.cmp_value(self) != Ordering::Less {
             return Magnitude::ZERO;
+        }
+        if self.is_infinite() {
+            return self;
         }
         let gap = self.exponent - other.exponent;
         let tail = if gap >= 62 { 1 } else { ((u64::from(other.mantissa) << 30) >> gap) + 1 };
@@ -293,11 +303,21 @@ mod tests {
     }
 
     #[test]
+    fn lower_bounds_saturate_below() {
+        let huge = Magnitude::power_of_two(EXPONENT_LIMIT - 100);
+        assert!(huge.mul(huge).is_infinite() && !huge.mul_down(huge).is_infinite());
+        let tiny = Magnitude::power_of_two(-EXPONENT_LIMIT);
+        assert!(!tiny.mul(tiny).is_zero() && tiny.mul_down(tiny).is_zero());
+    }
+
+    #[test]
     fn zero_and_infinity_behave() {
         let one = Magnitude::ONE;
         assert!(one.div(Magnitude::ZERO).is_infinite());
         assert!(Magnitude::INFINITY.mul(Magnitude::ZERO).is_infinite());
         assert!(one.sub_down(one).is_zero());
+        assert!(Magnitude::INFINITY.sub_down(Magnitude::INFINITY).is_zero());
+        assert!(Magnitude::INFINITY.sub_down(one).is_infinite());
         assert_eq!(one.pow(1000), one);
         assert!(Magnitude::from_float(&rug::Float::with_val(53, rug::float::Special::Nan)).is_infinite());
     }

@@ -12,11 +12,13 @@
 //! * [`magnitude`]: the radius, an unsigned 32-bit mantissa with a 64-bit exponent, rounded up.
 //! * [`rounding`]: the only place where MPFR is called with a rounding direction.
 //! * [`real`], [`complex`]: midpoint-radius balls.
+//! * [`convolution`]: sums of products along diagonals by one big-integer product.
 //! * [`interval`]: the directed lower/upper view used for input and output.
 //! * [`exact`]: decimals, fractions and intervals read without any rounding.
 //! * [`decimal`]: decimals printed with outward rounding, and the guaranteed-digits form.
 
 pub mod complex;
+pub mod convolution;
 pub mod decimal;
 pub mod exact;
 pub mod interval;

@@ -59,7 +59,9 @@ fn destination(path: &Path) -> Result<PathBuf, Error> {
             return refuse("this file is read-only; give a path that can be written");
         }
         Ok(_) => return fs::canonicalize(path).map_err(|error| failure("find", path, &error)),
-        Err(_) => {}
+        Err(error) if matches!(error.kind(), io::ErrorKind::NotFound | io::ErrorKind::NotADirectory) => {}
+        // A name that is too long or contains a zero byte, a directory that may not be searched.
+        Err(error) => return refuse(&format!("the system says: {}; give a path that can be written", plain(&error))),
     }
     let ends_in_name = path.file_name().is_some() && !path.as_os_str().as_encoded_bytes().ends_with(b"/");
     if !ends_in_name {

@@ -26,8 +26,9 @@ pub use file::check_writable;
 
 use crate::arithmetic::decimal;
 use crate::error::Error;
-use crate::quantities::tail::{RouteReport, TailRequest, TailResult};
-use crate::report::{CAUTION, DecimalBounds, Inputs, PROGRAM, TailReport, VERSION};
+use crate::quantities::question::{Inputs, Question};
+use crate::quantities::tail::{RouteReport, TailResult};
+use crate::report::{CAUTION, DecimalBounds, PROGRAM, TailReport, VERSION};
 use serde::{Deserialize, Serialize};
 use serde_json::Value;
 use sha2::{Digest, Sha256};
@@ -74,6 +75,9 @@ pub struct Certificate {
     pub value: Option<String>,
     /// Relative digits reached: `upper - lower <= 10^-digits * lower`.
     pub digits: u32,
+    /// Where the value is taken, for an extremum or a crossing.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub at: Option<Bounds>,
     /// `certified` or `fewer digits`.
     pub status: String,
     /// What each route found.
@@ -108,6 +112,16 @@ pub struct RouteCertificate {
     pub witness: Vec<Witness>,
 }
 
+/// A pair of decimals that bound a number.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Bounds {
+    /// Decimal not above the number.
+    pub lower: String,
+    /// Decimal not below the number.
+    pub upper: String,
+}
+
 /// One named number of a computation.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
@@ -123,8 +137,8 @@ impl Certificate {
     ///
     /// # Errors
     /// [`Error::Internal`] if the content cannot be written as JSON, which its types exclude.
-    pub fn new(request: &TailRequest, result: &TailResult) -> Result<Certificate, Error> {
-        let report = TailReport::new(request, result);
+    pub fn new(question: &dyn Question, result: &TailResult) -> Result<Certificate, Error> {
+        let report = TailReport::new(question, result);
         let mut certificate = Certificate {
             format: FORMAT.to_owned(),
             format_version: FORMAT_VERSION,
@@ -136,8 +150,9 @@ impl Certificate {
             upper: report.bounds.upper,
             value: report.value.map(|value: decimal::GuaranteedDecimal| value.text),
             digits: report.digits,
+            at: report.at.map(|at| Bounds { lower: at.lower, upper: at.upper }),
             status: report.status.name().to_owned(),
-            routes: result.routes.iter().map(|route| RouteCertificate::new(route, request.digits)).collect(),
+            routes: result.routes.iter().map(|route| RouteCertificate::new(route, question.digits())).collect(),
             notes: report.notes,
             caution: CAUTION.to_owned(),
             sha256: String::new(),
@@ -182,14 +197,17 @@ impl Certificate {
         };
         let certificate: Certificate = serde_json::from_str(text).map_err(unreadable)?;
         // The document itself, since a member left out would be filled in above.
-        let document: Value = serde_json::from_str(text).map_err(unreadable)?;
+        let content = canonical(serde_json::from_str(text).map_err(unreadable)?)?;
+        if content != certificate.canonical_content()? {
+            return refuse("a document with a member too few", "every member must be there, even one that is null");
+        }
         if certificate.format != FORMAT {
             return refuse(&certificate.format, "the format must be coneproof-certificate");
         }
         if certificate.format_version != FORMAT_VERSION {
             return refuse(&certificate.format_version.to_string(), "the format_version must be 1");
         }
-        if hash(&canonical(document)?) != certificate.sha256 {
+        if hash(&content) != certificate.sha256 {
             return refuse(&certificate.sha256, "the hash must be that of the content, which has been changed");
         }
         certificate.check_order()?;

@@ -2,7 +2,8 @@
 
 use crate::arithmetic::{Bits, ExactInput};
 use crate::error::Error;
-use crate::quantities::tail::MAX_DIGITS;
+use crate::quantities::boosted_tail::BoostedRegion;
+use crate::quantities::tail::{MAX_DIGITS, RouteChoice};
 use rug::Rational;
 use std::time::Duration;
 
@@ -32,6 +33,28 @@ pub(super) fn beyond(text: Option<&str>) -> Result<Option<ExactInput>, Error> {
             let wanted = "give a distance from the origin, such as 12 or 2.5, or the word cone for half-width + |time|";
             Error::bad_input("beyond", text, wanted)
         }),
+    }
+}
+
+/// The region of a moving observer.
+pub(super) fn boosted_region(text: &str) -> Result<BoostedRegion, Error> {
+    match text {
+        "cone" => Ok(BoostedRegion::Cone),
+        "contracted" => Ok(BoostedRegion::Contracted),
+        _ => match beyond(Some(text))? {
+            Some(distance) => Ok(BoostedRegion::Beyond(distance)),
+            None => Ok(BoostedRegion::Cone),
+        },
+    }
+}
+
+/// Which routes of the box run.
+pub(super) fn route(text: &str) -> Result<RouteChoice, Error> {
+    match text {
+        "kernel" => Ok(RouteChoice::Kernel),
+        "spectral" => Ok(RouteChoice::Spectral),
+        "both" => Ok(RouteChoice::Both),
+        _ => Err(Error::bad_input("route", text, "give kernel, spectral or both")),
     }
 }
 

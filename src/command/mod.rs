@@ -16,7 +16,11 @@ macro_rules! exit_codes {
     };
 }
 
+mod check;
+mod density;
 mod fields;
+mod peak;
+mod propagator;
 mod schema;
 mod tail;
 mod usage;
@@ -41,6 +45,14 @@ struct CommandLine {
 enum Task {
     /// The probability of finding a packet outside its light cone
     Tail(tail::TailCommand),
+    /// The largest probability over all times, with a proof that none is larger
+    Peak(peak::PeakCommand),
+    /// The density of finding a packet at given points, inside and outside its light cones
+    Density(density::DensityCommand),
+    /// The Newton-Wigner propagator, inside and outside the light cone
+    Propagator(propagator::PropagatorCommand),
+    /// Judge the claims of files: upheld, refuted or open
+    Check(check::CheckCommand),
     /// Print the JSON Schema of something that this program writes
     Schema(schema::SchemaCommand),
 }
@@ -50,6 +62,8 @@ const AFTER_HELP: &str = concat!(
 Examples:
   coneproof tail box --half-width 1 --mass 1 --time 1 --digits 30
   coneproof tail box --help
+  coneproof peak box --half-width 1/2 --over time
+  coneproof check claims.toml
   coneproof schema certificate
 
 ",
@@ -105,6 +119,10 @@ impl Task {
     fn answer(&self) -> Result<Answer, Error> {
         match self {
             Task::Tail(tail) => tail.answer(),
+            Task::Peak(peak) => peak.answer(),
+            Task::Density(density) => density.answer(),
+            Task::Propagator(propagator) => propagator.answer(),
+            Task::Check(check) => check.answer(),
             Task::Schema(schema) => Ok(schema.answer()),
         }
     }

@@ -15,7 +15,9 @@ pub(super) fn asks_for_json(args: &[OsString]) -> bool {
 /// Help and version as answers, everything else as an error of one sentence.
 pub(super) fn answer(refusal: clap::Error, args: &[OsString]) -> Result<Answer, Error> {
     match refusal.kind() {
-        ErrorKind::DisplayHelp | ErrorKind::DisplayVersion => Ok(Answer::plain(refusal.render().to_string())),
+        ErrorKind::DisplayHelp | ErrorKind::DisplayVersion => {
+            Ok(Answer::plain(format!("{}\n", refusal.render().to_string().trim_end())))
+        }
         _ => Err(sentence(&refusal, args)),
     }
 }

@@ -14,12 +14,15 @@
 //! | `sqrt` | `r / sqrt(m)` | `abs(sqrt x - sqrt m) = abs(x - m)/(sqrt x + sqrt m)` |
 //!
 //! Wide arguments of the increasing functions are evaluated at both ends with directed rounding
-//! instead ([`increasing`]). `sinh`, `cosh`, `acosh` always use their ends and monotonicity.
+//! instead (the macro `increasing`). `sinh`, `cosh`, `acosh` always use their ends and monotonicity.
+//! Constants come from stored words (`constants`) or, if more bits are wanted, from MPFR.
 
+use super::constants::{self, Leading};
 use crate::arithmetic::{Bits, Interval, Magnitude, Real, rounding};
-use rug::Float;
 use rug::float::{Constant, Round};
+use rug::integer::Order;
 use rug::ops::AssignRound;
+use rug::{Float, Integer};
 use std::cmp::Ordering;
 
 /// Evaluates an increasing function at the two ends of the ball with directed rounding.
@@ -166,17 +169,31 @@ pub fn acosh(x: &Real, bits: Bits) -> Real {
 
 /// The circle constant.
 pub fn pi(bits: Bits) -> Real {
-    at_midpoint(bits, Constant::Pi, Magnitude::ZERO)
+    constant(&constants::PI, Constant::Pi, bits)
 }
 
 /// Natural logarithm of two.
 pub fn ln_2(bits: Bits) -> Real {
-    at_midpoint(bits, Constant::Log2, Magnitude::ZERO)
+    constant(&constants::LN_2, Constant::Log2, bits)
 }
 
 /// Euler's constant.
 pub fn euler_gamma(bits: Bits) -> Real {
-    at_midpoint(bits, Constant::Euler, Magnitude::ZERO)
+    constant(&constants::EULER_GAMMA, Constant::Euler, bits)
+}
+
+/// A constant from its leading words, short by at most one unit of the last word taken, or from MPFR.
+fn constant(leading: &Leading, source: Constant, bits: Bits) -> Real {
+    let words = bits as usize / 64 + 2;
+    let Some(fraction) = leading.fraction.get(..words) else {
+        // MPFR keeps what it has computed and starts again if more is wanted: ask for a little more.
+        let (long, error) = rounding::nearest(bits.checked_next_multiple_of(512).unwrap_or(bits), source);
+        let (midpoint, rounding_error) = rounding::nearest(bits, &long);
+        return Real::new(midpoint, error.add(rounding_error));
+    };
+    let mut scaled = Integer::from_digits(fraction, Order::Msf);
+    scaled += Integer::from(leading.whole) << (64 * words as u32);
+    Real::from_integer(&scaled, bits).widen(Magnitude::ONE).shift(-64 * words as i64)
 }
 
 #[cfg(test)]
@@ -227,6 +244,22 @@ mod tests {
     containment!(asinh, asinh, -50.0, 50.0);
     containment!(cosh, cosh, -50.0, 50.0);
     containment!(acosh, acosh, 1.0, 50.0);
+
+    // Against MPFR, which computes each constant itself (MPFR manual, `mpfr_const_euler` and so on).
+    #[test]
+    fn constants_contain_the_values_of_mpfr() {
+        type Function = fn(Bits) -> Real;
+        let all: [(Function, Constant); 3] =
+            [(pi, Constant::Pi), (ln_2, Constant::Log2), (euler_gamma, Constant::Euler)];
+        for (function, constant) in all {
+            let exact = Float::with_val(4000, constant).to_rational().unwrap();
+            for bits in (32..760).chain([1000, 1024, 1025, 3500]) {
+                let ball = function(bits);
+                assert!(ball.contains_rational(&exact), "{constant:?} at {bits} bits");
+                assert!(ball.accuracy_estimate() >= f64::from(bits), "{constant:?} at {bits} bits");
+            }
+        }
+    }
 
     #[test]
     fn domains_are_guarded() {

@@ -5,11 +5,14 @@
 //! intersection is the answer. Requests with interval inputs are reduced to exact ones by the
 //! monotonicity lemmas in [`super::tail_range`].
 
+use super::meeting::meet;
+pub use super::meeting::{RouteReport, Status};
+use super::question::{Inputs, Question};
 use super::tail_range;
 use crate::arithmetic::{Bits, ExactInput, Interval, decimal, rounding};
 use crate::error::Error;
 use crate::packets::BoxPacket;
-use crate::routes::{Effort, Route, RouteFailure, RouteOutcome, TailProblem, kernel, spectral};
+use crate::routes::{Bound, Effort, Evaluation, Route, TailProblem, kernel, spectral};
 use rug::{Float, Rational};
 use std::time::{Duration, Instant};
 
@@ -98,46 +101,6 @@ pub struct TailRequest {
     pub time_limit: Option<Duration>,
 }
 
-/// Whether the digits asked were reached.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum Status {
-    /// `(upper - lower) <= 10^-digits * lower` is proven.
-    Certified,
-    /// The interval is proven, but wider than asked.
-    FewerDigits,
-}
-
-impl Status {
-    /// The name in reports and certificates.
-    pub fn name(self) -> &'static str {
-        match self {
-            Status::Certified => "certified",
-            Status::FewerDigits => "fewer digits",
-        }
-    }
-}
-
-/// What one route contributed.
-#[derive(Clone, Debug)]
-pub struct RouteReport {
-    /// Name of the route.
-    pub name: &'static str,
-    /// One sentence on the method.
-    pub method: &'static str,
-    /// Its own enclosure, if it has one.
-    pub interval: Option<Interval>,
-    /// Working precision in bits.
-    pub bits: Bits,
-    /// Number of nodes.
-    pub nodes: usize,
-    /// Time taken.
-    pub seconds: f64,
-    /// Why it has no enclosure, or fewer digits than asked.
-    pub note: Option<String>,
-    /// Named numbers that fix the computation.
-    pub witness: Vec<(String, String)>,
-}
-
 /// A certified tail probability.
 #[derive(Clone, Debug)]
 pub struct TailResult {
@@ -153,6 +116,8 @@ pub struct TailResult {
     pub routes: Vec<RouteReport>,
     /// Remarks for the reader, such as what limits the digits.
     pub notes: Vec<String>,
+    /// Where the value is taken, for an extremum or a crossing.
+    pub at: Option<Interval>,
     /// Total time taken.
     pub seconds: f64,
 }
@@ -231,21 +196,16 @@ impl TailRequest {
             }
         }
         let certified = interval.has_relative_digits(self.digits);
-        Ok(TailResult {
-            value: decimal::guaranteed_decimal(&interval, self.digits),
-            digits: interval.relative_digits(self.digits),
-            status: if certified { Status::Certified } else { Status::FewerDigits },
-            notes: self.notes(&routes, certified),
-            interval,
-            routes,
-            seconds: start.elapsed().as_secs_f64(),
-        })
+        let notes = self.notes(&routes, &interval, certified);
+        Ok(TailResult::new(interval, self.digits, routes, notes, start))
     }
 
     /// What a reader should know beside the numbers.
-    fn notes(&self, routes: &[RouteReport], certified: bool) -> Vec<String> {
+    fn notes(&self, routes: &[RouteReport], interval: &Interval, certified: bool) -> Vec<String> {
         let note = if routes.is_empty() {
             "at time zero the packet lies inside its box: the probability is exactly zero"
+        } else if routes.iter().all(|route| route.interval.is_none()) && *interval.upper() < 1e-9 {
+            "no route has bounds: shown is the bound exp(-2E)/(16 m a), E^2 = m^2 ((R - a)^2 - t^2), rounded up"
         } else if routes.iter().all(|route| route.interval.is_none()) {
             "no route has bounds: all that is known is that a probability lies between 0 and 1"
         } else if !certified && routes.iter().all(|route| route.note.is_none()) {
@@ -263,8 +223,78 @@ impl TailRequest {
     }
 }
 
+impl TailResult {
+    /// The result with everything that follows from its interval.
+    pub(super) fn new(
+        interval: Interval,
+        digits: u32,
+        routes: Vec<RouteReport>,
+        notes: Vec<String>,
+        start: Instant,
+    ) -> TailResult {
+        let certified = interval.has_relative_digits(digits);
+        TailResult {
+            value: decimal::guaranteed_decimal(&interval, digits),
+            digits: interval.relative_digits(digits),
+            status: if certified { Status::Certified } else { Status::FewerDigits },
+            notes,
+            interval,
+            routes,
+            at: None,
+            seconds: start.elapsed().as_secs_f64(),
+        }
+    }
+}
+
+/// The region of the positions that count, in the names given for its edge.
+pub(super) fn region(side: Side, at_cone: bool, edge: &str) -> String {
+    match side {
+        Side::Both => format!("|x| > {edge}"),
+        Side::Right => format!("x > {edge}"),
+        Side::Left if at_cone => format!("x < -({edge})"),
+        Side::Left => format!("x < -{edge}"),
+    }
+}
+
+impl Question for TailRequest {
+    fn inputs(&self) -> Inputs {
+        Inputs::of_packet(BoxPacket::NAME)
+            .with("half_width", self.packet.half_width().text())
+            .with("mass", self.mass.text())
+            .with("time", self.time.text())
+            .with("beyond", self.beyond.as_ref().map_or("cone", |region| region.text()))
+            .with("side", self.side.name())
+            .with("digits", self.digits.to_string())
+            .with("route", self.routes.name())
+            .with_optional("max_bits", self.max_bits.map(|bits| bits.to_string()))
+            .with_optional("time_limit", self.time_limit.map(|limit| limit.as_secs_f64().to_string()))
+    }
+
+    fn formula(&self) -> String {
+        let edge = if self.beyond.is_some() { "beyond" } else { "half_width + |time|" };
+        format!("P({})", region(self.side, self.beyond.is_none(), edge))
+    }
+
+    fn words(&self) -> String {
+        let (place, edge) = match self.beyond {
+            None => ("outside its light cone", "a + |t|"),
+            Some(_) => ("beyond a given distance outside its light cone", "R"),
+        };
+        let region = region(self.side, self.beyond.is_none(), edge);
+        format!("Probability of finding the particle {place}: {region}")
+    }
+
+    fn digits(&self) -> u32 {
+        self.digits
+    }
+
+    fn certify(&self) -> Result<TailResult, Error> {
+        TailRequest::certify(self)
+    }
+}
+
 /// Exact arithmetic on numbers of a million digits would take minutes.
-fn check_size(field: &str, input: &ExactInput) -> Result<(), Error> {
+pub(super) fn check_size(field: &str, input: &ExactInput) -> Result<(), Error> {
     let small = |end: &Rational| end.numer().significant_bits().max(end.denom().significant_bits()) <= MAX_INPUT_BITS;
     if small(input.lower()) && small(input.upper()) {
         return Ok(());
@@ -274,7 +304,7 @@ fn check_size(field: &str, input: &ExactInput) -> Result<(), Error> {
 }
 
 /// An exact number for a sentence: as a fraction if that is short, else rounded up.
-fn readable(value: &Rational) -> String {
+pub(super) fn readable(value: &Rational) -> String {
     if value.numer().significant_bits().max(value.denom().significant_bits()) <= 64 {
         return value.to_string();
     }
@@ -282,7 +312,7 @@ fn readable(value: &Rational) -> String {
 }
 
 /// The part of an enclosure that can be a probability.
-fn as_probability(interval: &Interval) -> Result<Interval, Error> {
+pub(super) fn as_probability(interval: &Interval) -> Result<Interval, Error> {
     let unit = Interval::new(Float::new(64), Float::with_val(64, 1));
     let found = || format!("the enclosure [{}, {}] of a probability", interval.lower(), interval.upper());
     interval.intersection(&unit).ok_or_else(|| Error::Internal { found: found() })
@@ -330,24 +360,15 @@ pub(super) fn run_routes(
         RouteChoice::Spectral => vec![&spectral::SPECTRAL],
         RouteChoice::Both => vec![&kernel::KERNEL, &spectral::SPECTRAL],
     };
-    let mut reports = Vec::with_capacity(chosen.len());
-    for (index, route) in chosen.iter().enumerate() {
-        let share = effort.deadline.map(|deadline| share_of_time(deadline, chosen.len() - index));
-        reports.push(match below_arithmetic(problem) {
-            true => report(*route, None, Some(BELOW_ARITHMETIC.to_owned()), Duration::ZERO),
-            false => drive(*route, problem, digits, &Effort { deadline: share, ..*effort }),
-        });
+    if below_arithmetic(problem) {
+        let reports =
+            chosen.iter().map(|route| RouteReport::idle(route.name(), route.method(problem), BELOW_ARITHMETIC));
+        return Ok((without_routes(problem), reports.collect()));
     }
-    let mut meeting: Option<Interval> = None;
-    for interval in reports.iter().filter_map(|report| report.interval.as_ref()) {
-        meeting = Some(match meeting {
-            None => interval.clone(),
-            Some(so_far) => so_far.intersection(interval).ok_or_else(|| disagreement(&reports))?,
-        });
-    }
-    // With no route at all, a probability still lies between zero and one.
-    let unknown = || Interval::new(Float::new(64), Float::with_val(64, 1));
-    Ok((meeting.unwrap_or_else(unknown), reports))
+    let bound: Vec<Bound> = chosen.into_iter().map(|route| Bound { route, problem }).collect();
+    let evaluations: Vec<&dyn Evaluation> = bound.iter().map(|bound| bound as &dyn Evaluation).collect();
+    let (meeting, reports) = meet(&evaluations, digits, effort)?;
+    Ok((meeting.unwrap_or_else(|| without_routes(problem)), reports))
 }
 
 /// Why a route does not run.
@@ -360,86 +381,17 @@ fn below_arithmetic(problem: &TailProblem) -> bool {
     !problem.massless && (d + Rational::from(t * 2)) * d > Rational::from(370_000_000u64).square()
 }
 
-/// The moment at which the next one of several routes has to stop, so that each gets its share.
-fn share_of_time(deadline: Instant, routes: usize) -> Instant {
-    let left = deadline.saturating_duration_since(Instant::now());
-    let share = u32::try_from(routes).map_or(left, |routes| left / routes.max(1));
-    deadline.checked_sub(left - share).unwrap_or(deadline)
-}
-
-fn disagreement(reports: &[RouteReport]) -> Error {
-    let shown = |report: &RouteReport| {
-        report.interval.as_ref().map(|interval| {
-            let lower = decimal::lower_decimal(interval.lower(), 30);
-            (report.name.to_owned(), lower, decimal::upper_decimal(interval.upper(), 30))
-        })
-    };
-    Error::RoutesDisagree { intervals: reports.iter().filter_map(shown).collect() }
-}
-
-/// Raises the goal of one route until its interval has the digits asked or the effort ends.
-fn drive(route: &dyn Route, problem: &TailProblem, digits: u32, effort: &Effort) -> RouteReport {
-    const ATTEMPTS: usize = 5;
-    let start = Instant::now();
-    let mut best: Option<RouteOutcome> = None;
-    let mut note = None;
-    // Under a time limit, a quick first answer makes sure that there is an honest interval.
-    let quick = effort.deadline.is_some() && digits > 30;
-    let mut goal = if quick { 15 } else { digits };
-    for _ in 0..ATTEMPTS {
-        match evaluate_within(route, problem, goal, effort) {
-            Ok((outcome, cut)) => {
-                let reached = outcome.interval.relative_digits(digits);
-                let improves = best.as_ref().is_none_or(|b| b.interval.relative_digits(digits) < reached);
-                if improves || best.is_none() {
-                    best = Some(outcome);
-                }
-                if reached >= digits || cut {
-                    note = (reached < digits).then(|| "the limit on bits was reached".to_owned());
-                    break;
-                }
-                note = Some("the interval did not become narrow enough".to_owned());
-                goal = if goal < digits { digits } else { goal + (digits - reached) + 3 };
-            }
-            Err(failure) => {
-                note = Some(failure.to_string());
-                break;
-            }
-        }
+/// What is known without a route: a probability lies between zero and one, and further
+/// `P <= exp(-2E)/(16 a)` (unit mass). In the double integral of the spectral route each factor `w`
+/// is at most `exp(-E)/4`, and `Int Int_0^inf dx dy/(cosh x + cosh y) = pi^2/4`, so
+/// `P = 4/(pi^2 a) S <= 4/(pi^2 a) exp(-2E) pi^2/64`. If `E >= 3.7e8`, `exp(-2E) < 1e-321000000`;
+/// the width `a` is above `1e-1000000` as the inputs have at most [`MAX_INPUT_BITS`] bits, so `P`
+/// is below `1e-300000000`.
+pub(super) fn without_routes(problem: &TailProblem) -> Interval {
+    let mut upper = Float::with_val(64, 1);
+    if below_arithmetic(problem) {
+        let power = rounding::down(64, Float::u_pow_u(10, 300_000_000));
+        upper = rounding::up(64, power.recip_ref());
     }
-    let reached = best.as_ref().is_some_and(|b| b.interval.has_relative_digits(digits));
-    report(route, best, if reached { None } else { note }, start.elapsed())
-}
-
-/// One evaluation; when bits are short, the largest goal that the limit allows (flagged `true`).
-fn evaluate_within(
-    route: &dyn Route,
-    problem: &TailProblem,
-    goal: u32,
-    effort: &Effort,
-) -> Result<(RouteOutcome, bool), RouteFailure> {
-    let mut goal = goal;
-    let mut cut = false;
-    loop {
-        match route.evaluate(problem, goal, effort) {
-            Err(RouteFailure::BitLimit { needed }) if goal > 1 => {
-                // Bits grow by at most needed / goal for each digit, so this never gives up too much.
-                let excess = needed.saturating_sub(effort.max_bits.unwrap_or(needed));
-                let digits = u64::from(excess) * u64::from(goal) / u64::from(needed.max(1));
-                goal = goal.saturating_sub(u32::try_from(digits).unwrap_or(goal).max(1)).max(1);
-                cut = true;
-            }
-            Err(failure) => return Err(failure),
-            Ok(outcome) => return Ok((outcome, cut)),
-        }
-    }
-}
-
-fn report(route: &dyn Route, best: Option<RouteOutcome>, note: Option<String>, elapsed: Duration) -> RouteReport {
-    let (interval, bits, nodes, witness) = match best {
-        Some(outcome) => (Some(outcome.interval), outcome.bits, outcome.nodes, outcome.witness),
-        None => (None, 0, 0, Vec::new()),
-    };
-    let seconds = elapsed.as_secs_f64();
-    RouteReport { name: route.name(), method: route.method(), interval, bits, nodes, seconds, note, witness }
+    Interval::new(Float::new(64), upper)
 }

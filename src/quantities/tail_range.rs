@@ -26,7 +26,7 @@
 //! intervals and for each route by itself, so that what is shown for a route is an enclosure that
 //! rests on this route alone.
 
-use super::tail::{RouteReport, TailRequest, run_routes, scale};
+use super::tail::{RouteReport, TailRequest, run_routes, scale, without_routes};
 use crate::arithmetic::{Bits, ExactInput, Interval, Real, decimal, rounding};
 use crate::error::Error;
 use crate::functions::elementary;
@@ -92,6 +92,8 @@ struct Corner {
 struct Known {
     meeting: Interval,
     routes: Vec<RouteReport>,
+    /// What holds without any route.
+    general: Interval,
 }
 
 impl Corner {
@@ -106,11 +108,12 @@ impl Corner {
     }
 
     fn evaluate(&self, request: &TailRequest, digits: u32, effort: &Effort) -> Result<Known, Error> {
-        let (meeting, routes) = match scale(&self.half_width, &self.mass, &self.time, self.beyond.as_ref()) {
-            None => (Interval::new(Float::new(64), Float::new(64)), Vec::new()),
-            Some(problem) => run_routes(&problem, request.routes, digits, effort)?,
+        let Some(problem) = scale(&self.half_width, &self.mass, &self.time, self.beyond.as_ref()) else {
+            let zero = Interval::new(Float::new(64), Float::new(64));
+            return Ok(Known { meeting: zero.clone(), routes: Vec::new(), general: zero });
         };
-        Ok(Known { meeting, routes })
+        let (meeting, routes) = run_routes(&problem, request.routes, digits, effort)?;
+        Ok(Known { meeting, routes, general: without_routes(&problem) })
     }
 
     fn in_words(&self) -> String {
@@ -187,28 +190,28 @@ impl Reduction {
 
     /// What one route found: its own enclosure, and the exact problems that it rests on.
     fn report(&self, index: usize, solved: &BTreeMap<&Corner, Known>) -> Option<RouteReport> {
-        // At time zero the answer is exact and no route has to run.
-        let interval_of = |known: &Known| match known.routes.get(index) {
-            None => Some(known.meeting.clone()),
-            Some(route) => route.interval.clone(),
-        };
+        // At time zero no route has to run. Where a route has no bounds, the general ones remain.
+        let own = |known: &Known| known.routes.get(index).and_then(|route| route.interval.clone());
+        let interval_of = |known: &Known| own(known).unwrap_or_else(|| known.general.clone());
         let reports: Vec<&RouteReport> = solved.values().filter_map(|known| known.routes.get(index)).collect();
         let mut witness = self.witness.clone();
         for (number, (corner, known)) in solved.iter().enumerate() {
-            let shown = interval_of(known).map_or("no bounds".to_owned(), |i| shown(&i));
+            let shown = shown(&interval_of(known));
             let effort =
                 known.routes.get(index).map_or(String::new(), |r| format!(", {} bits, {} nodes", r.bits, r.nodes));
             witness.push((format!("exact problem {}", number + 1), format!("{}: {shown}{effort}", corner.in_words())));
         }
         let first = reports.first()?;
+        let note = reports.iter().find_map(|report| report.note.as_ref());
+        let joined = || self.join(|corner| solved.get(corner).map(interval_of));
         Some(RouteReport {
             name: first.name,
             method: first.method,
-            interval: self.join(|corner| solved.get(corner).and_then(interval_of)),
+            interval: reports.iter().any(|report| report.interval.is_some()).then(joined).flatten(),
             bits: reports.iter().map(|report| report.bits).max().unwrap_or(0),
             nodes: reports.iter().map(|report| report.nodes).sum(),
             seconds: reports.iter().map(|report| report.seconds).sum(),
-            note: reports.iter().find_map(|report| report.note.clone()),
+            note: note.map(|note| format!("in one of {} exact problems: {note}", solved.len())),
             witness,
         })
     }

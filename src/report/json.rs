@@ -5,8 +5,9 @@
 //! `schemas/tail-result.schema.json`), `not certified` ([`scout`]; `tail-estimate.schema.json`) and
 //! `error` ([`error`]; `error.schema.json`).
 
-use super::{CAUTION, Inputs, PROGRAM, RouteLine, TailReport, VERSION};
+use super::{CAUTION, PROGRAM, RouteLine, TailReport, VERSION};
 use crate::error::Error;
+use crate::quantities::question::Inputs;
 use crate::scout::Scout;
 use serde::Serialize;
 
@@ -18,6 +19,8 @@ struct ResultObject<'a> {
     upper: &'a str,
     value: Option<&'a str>,
     digits: u32,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    at: Option<BoundsObject<'a>>,
     routes: Vec<RouteObject<'a>>,
     status: &'a str,
     notes: &'a [String],
@@ -25,6 +28,12 @@ struct ResultObject<'a> {
     seconds: f64,
     program: &'a str,
     version: &'a str,
+}
+
+#[derive(Serialize)]
+struct BoundsObject<'a> {
+    lower: &'a str,
+    upper: &'a str,
 }
 
 #[derive(Serialize)]
@@ -84,6 +93,7 @@ pub fn result(report: &TailReport) -> Result<String, Error> {
         upper: &report.bounds.upper,
         value: report.value.as_ref().map(|value| value.text.as_str()),
         digits: report.digits,
+        at: report.at.as_ref().map(|at| BoundsObject { lower: &at.lower, upper: &at.upper }),
         routes: report.routes.iter().map(route).collect(),
         status: report.status.name(),
         notes: &report.notes,
@@ -148,7 +158,7 @@ pub fn error(error: &Error) -> Result<String, Error> {
     line(&ErrorObject { status, field, was, wanted, message, routes, exit_code, program, version })
 }
 
-fn line(object: &impl Serialize) -> Result<String, Error> {
+pub(super) fn line(object: &impl Serialize) -> Result<String, Error> {
     let text = serde_json::to_string(object).map_err(|error| Error::Internal { found: error.to_string() })?;
     Ok(text + "\n")
 }

@@ -4,14 +4,15 @@
 //! bounds are rounded outward, and get as many digits as are needed for the decimal interval
 //! itself to satisfy `upper - lower <= 10^-digits * lower`. Certificates use the same strings.
 
+pub mod claims;
 pub mod json;
+pub mod points;
 pub mod text;
 
 use crate::arithmetic::{Interval, decimal, rounding};
-use crate::packets::BoxPacket;
-use crate::quantities::tail::{RouteReport, Side, Status, TailRequest, TailResult};
+use crate::quantities::question::{Inputs, Question};
+use crate::quantities::tail::{RouteReport, Status, TailResult};
 use rug::Float;
-use serde::{Deserialize, Serialize};
 
 /// The program's name in reports and certificates.
 pub const PROGRAM: &str = env!("CARGO_PKG_NAME");
@@ -20,67 +21,6 @@ pub const VERSION: &str = env!("CARGO_PKG_VERSION");
 /// What every reader of a number should bear in mind.
 pub const CAUTION: &str =
     "the numbers describe an idealised free particle; do not base decisions about hardware or safety on them alone";
-
-/// The inputs of a request, as read.
-#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
-pub struct Inputs {
-    /// Kind of packet.
-    pub packet: String,
-    /// Half-width `a` of the packet.
-    pub half_width: String,
-    /// Mass `m`.
-    pub mass: String,
-    /// Time `t`.
-    pub time: String,
-    /// The distance `R`, or `cone` for `a + |t|`.
-    pub beyond: String,
-    /// `left`, `right` or `both`.
-    pub side: String,
-    /// Relative digits asked.
-    pub digits: String,
-    /// `kernel`, `spectral` or `both`.
-    pub route: String,
-    /// Largest working precision, if limited.
-    #[serde(skip_serializing_if = "Option::is_none", default)]
-    pub max_bits: Option<String>,
-    /// Longest time in seconds, if limited.
-    #[serde(skip_serializing_if = "Option::is_none", default)]
-    pub time_limit: Option<String>,
-}
-
-impl From<&TailRequest> for Inputs {
-    fn from(request: &TailRequest) -> Inputs {
-        Inputs {
-            packet: BoxPacket::NAME.to_owned(),
-            half_width: request.packet.half_width().text().to_owned(),
-            mass: request.mass.text().to_owned(),
-            time: request.time.text().to_owned(),
-            beyond: request.beyond.as_ref().map_or("cone", |region| region.text()).to_owned(),
-            side: request.side.name().to_owned(),
-            digits: request.digits.to_string(),
-            route: request.routes.name().to_owned(),
-            max_bits: request.max_bits.map(|bits| bits.to_string()),
-            time_limit: request.time_limit.map(|limit| limit.as_secs_f64().to_string()),
-        }
-    }
-}
-
-/// The quantity asked for, as a formula in the names of [`Inputs`].
-pub fn quantity(request: &TailRequest) -> String {
-    format!("P({})", region(request, "half_width + |time|", "beyond"))
-}
-
-/// The region of the positions that count, in the names given.
-fn region(request: &TailRequest, cone: &str, beyond: &str) -> String {
-    let edge = if request.beyond.is_some() { beyond } else { cone };
-    match request.side {
-        Side::Both => format!("|x| > {edge}"),
-        Side::Right => format!("x > {edge}"),
-        Side::Left if request.beyond.is_some() => format!("x < -{edge}"),
-        Side::Left => format!("x < -({edge})"),
-    }
-}
 
 /// An interval as two decimals, rounded outward.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -166,24 +106,28 @@ pub struct TailReport {
     pub routes: Vec<RouteLine>,
     /// Remarks for the reader.
     pub notes: Vec<String>,
+    /// Where the value is taken, for an extremum or a crossing.
+    pub at: Option<DecimalBounds>,
     /// Total time taken.
     pub seconds: f64,
 }
 
 impl TailReport {
-    /// The result of a request in decimals.
-    pub fn new(request: &TailRequest, result: &TailResult) -> TailReport {
+    /// The result of a question in decimals.
+    pub fn new(question: &dyn Question, result: &TailResult) -> TailReport {
+        let digits = question.digits();
         TailReport {
-            quantity: quantity(request),
-            words: in_words(request),
-            inputs: Inputs::from(request),
-            bounds: DecimalBounds::new(&result.interval, request.digits),
+            quantity: question.formula(),
+            words: question.words(),
+            inputs: question.inputs(),
+            bounds: DecimalBounds::new(&result.interval, digits),
             value: result.value.clone(),
             digits: result.digits,
-            digits_asked: request.digits,
+            digits_asked: digits,
             status: result.status,
-            routes: result.routes.iter().map(|route| RouteLine::new(route, request.digits)).collect(),
+            routes: result.routes.iter().map(|route| RouteLine::new(route, digits)).collect(),
             notes: result.notes.clone(),
+            at: result.at.as_ref().map(|at| DecimalBounds::new(at, digits)),
             seconds: result.seconds,
         }
     }
@@ -200,15 +144,6 @@ impl RouteLine {
             note: route.note.clone(),
         }
     }
-}
-
-/// The quantity in words.
-pub fn in_words(request: &TailRequest) -> String {
-    let place = match request.beyond {
-        None => "outside its light cone",
-        Some(_) => "beyond a given distance outside its light cone",
-    };
-    format!("Probability of finding the particle {place}: {}", region(request, "a + |t|", "R"))
 }
 
 #[cfg(test)]

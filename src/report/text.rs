@@ -5,7 +5,8 @@
 //! more than [`CHUNK`] characters are shortened in the middle, with the number of characters left
 //! out; in full they are in the JSON report.
 
-use super::{CAUTION, DecimalBounds, Inputs, RouteLine, TailReport};
+use super::{CAUTION, DecimalBounds, RouteLine, TailReport};
+use crate::quantities::question::Inputs;
 use crate::quantities::tail::Status;
 use crate::scout::Scout;
 
@@ -25,6 +26,9 @@ pub fn result(report: &TailReport) -> String {
     text.push('\n');
     text += &value(report);
     text += &numbers(&report.bounds);
+    if let Some(at) = &report.at {
+        text += &entry("at time", &format!("from {} to {}", shortened(&at.lower), shortened(&at.upper)));
+    }
     for route in &report.routes {
         text.push('\n');
         text += &route_lines(route);
@@ -54,19 +58,31 @@ pub fn scout(words: &str, inputs: &Inputs, scout: &Scout) -> String {
 fn heading(words: &str, inputs: &Inputs) -> String {
     let mut text = format!("{words}\n");
     text += "Free particle released at time 0, Newton-Wigner position, units with hbar = c = 1\n\n";
-    let listed = [
-        ("packet", &inputs.packet),
-        ("half-width a", &inputs.half_width),
-        ("mass m", &inputs.mass),
-        ("time t", &inputs.time),
-        ("beyond R", &inputs.beyond),
-        ("side", &inputs.side),
-    ];
-    for (name, read) in listed {
-        let explained = if read == "cone" { "cone (a + |t|)" } else { read };
-        text += &entry(name, &shortened(&one_line(explained)));
+    // How an answer is computed is said elsewhere.
+    const ELSEWHERE: [&str; 4] = ["digits", "route", "max_bits", "time_limit"];
+    for (name, read) in inputs.iter().filter(|(name, _)| !ELSEWHERE.contains(name)) {
+        let at_rest = inputs.get("rapidity").or(inputs.get("boost_velocity")).is_none();
+        let explained = match (name, read, inputs.get("half_width").filter(|_| at_rest)) {
+            ("beyond", "cone", Some(_)) => "cone (a + |t|)",
+            _ => read,
+        };
+        text += &entry(&label(name), &shortened(&one_line(explained)));
     }
     text
+}
+
+/// The name of an input with its symbol.
+fn label(name: &str) -> String {
+    let symbol = match name {
+        "half_width" | "radius" => " a",
+        "mass" => " m",
+        "time" => " t",
+        "beyond" => " R",
+        "momentum" => " k",
+        _ => "",
+    };
+    let words = if name == "half_width" { "half-width".to_owned() } else { name.replace('_', " ") };
+    words + symbol
 }
 
 fn value(report: &TailReport) -> String {
@@ -85,7 +101,7 @@ fn status(report: &TailReport) -> String {
     match report.status {
         Status::Certified if report.bounds.lower == report.bounds.upper => "certified: exact".to_owned(),
         Status::Certified => {
-            format!("certified: {} relative digits; the value is within one unit of its last digit", report.digits)
+            format!("certified: {} relative digits; value within one unit of its last digit", report.digits)
         }
         Status::FewerDigits => format!(
             "fewer digits than asked: {} of {}; the interval is proven all the same",
@@ -118,7 +134,7 @@ fn route_lines(route: &RouteLine) -> String {
 
 /// One name with its content, continued under itself: a long number every [`CHUNK`] characters,
 /// sentences at blanks.
-fn entry(name: &str, content: &str) -> String {
+pub(super) fn entry(name: &str, content: &str) -> String {
     let lines = if content.contains(' ') { sentence_lines(content) } else { number_lines(content) };
     let labels = std::iter::once(name).chain(std::iter::repeat(""));
     labels.zip(lines).map(|(label, line)| format!("{label:<COLUMN$}{line}\n")).collect()
@@ -145,7 +161,7 @@ fn sentence_lines(content: &str) -> Vec<String> {
 }
 
 /// The text with its middle left out if it is longer than a line.
-fn shortened(text: &str) -> String {
+pub(super) fn shortened(text: &str) -> String {
     const HEAD: usize = 24;
     const TAIL: usize = 20;
     let characters: Vec<char> = text.chars().collect();
@@ -158,12 +174,12 @@ fn shortened(text: &str) -> String {
 }
 
 /// The text without control characters, which an input may contain as blanks.
-fn one_line(text: &str) -> String {
+pub(super) fn one_line(text: &str) -> String {
     text.chars().map(|character| if character.is_control() { ' ' } else { character }).collect()
 }
 
 /// Seconds in a unit that people read easily.
-fn duration(seconds: f64) -> String {
+pub(super) fn duration(seconds: f64) -> String {
     if seconds < 1e-3 {
         format!("{:.0} µs", seconds * 1e6)
     } else if seconds < 1.0 {

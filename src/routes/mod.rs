@@ -3,9 +3,18 @@
 //! A [`Route`] gets an exact [`TailProblem`] and a goal in digits and returns an enclosure with the
 //! data that an outsider needs to repeat it. Routes share the arithmetic and nothing else.
 
+pub mod boost;
+pub mod contour;
 pub mod cut;
+pub mod density;
+mod descent;
 mod estimate;
+pub mod gaussian;
 pub mod kernel;
+pub mod lattice;
+pub mod panels;
+pub mod pointwise;
+pub mod propagator;
 pub mod spectral;
 
 use crate::arithmetic::{Bits, Interval};
@@ -97,13 +106,15 @@ impl std::fmt::Display for RouteFailure {
     }
 }
 
+impl std::error::Error for RouteFailure {}
+
 /// One way from a problem to an enclosure.
 pub trait Route: Sync {
     /// Name on the command line and in certificates.
     fn name(&self) -> &'static str;
 
     /// One sentence on the method, for certificates.
-    fn method(&self) -> &'static str;
+    fn method(&self, problem: &TailProblem) -> &'static str;
 
     /// An enclosure aiming at a relative width of `10^-digits`; the width is the caller's to check.
     ///
@@ -144,7 +155,7 @@ impl Evaluation for Bound<'_> {
     }
 
     fn method(&self) -> &'static str {
-        self.route.method()
+        self.route.method(self.problem)
     }
 
     fn evaluate(&self, digits: u32, effort: &Effort) -> Result<RouteOutcome, RouteFailure> {

@@ -90,9 +90,11 @@ def draw_real(random_):
 
 
 def draw_complex(random_):
-    """A complex case with Re z > 0 and 1e-3 <= |z| <= 1e3, one in five close to the imaginary axis."""
-    bits = draw_bits(random_, 1000)
-    size = random_.uniform(math.log2(1e-3), math.log2(1e3))
+    """A complex case with Re z >= 0: most with 1e-3 <= |z| <= 1e3, some near the imaginary axis and some on it."""
+    choice = random_.random()
+    # As for real arguments: a thousand and more bits where FLINT and the program are quick enough.
+    bits = draw_bits(random_, 3500 if choice < 0.9 else 1000)
+    size = random_.uniform(math.log2(1e-3), math.log2(1e3)) if choice < 0.9 else random_.uniform(-100, 16)
     choice = random_.random()
     if choice < 0.2:
         smallness = 2.0 ** random_.uniform(-40, -1)
@@ -106,6 +108,8 @@ def draw_complex(random_):
     imaginary = dyadic_near(random_, size + math.log2(abs(math.sin(angle))), mantissa_bits)
     if angle < 0:
         imaginary = dyadic.negate(imaginary)
+    if random_.random() < 0.1:
+        real = (0, 0)
     return Case(random_.randrange(3), bits, real, imaginary)
 
 

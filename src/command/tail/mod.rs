@@ -1,14 +1,20 @@
 //! `coneproof tail PACKET`: the options that all packets share, and the answer.
 //!
-//! A further packet is one file beside [`box_packet`] and one line in [`PacketCommand`].
+//! A further packet has its options in [`packets`] and one line in [`PacketCommand`].
 
 mod box_packet;
+mod packets;
 
 use super::{Answer, fields};
+use crate::arithmetic::ExactInput;
 use crate::certificate::{self, Certificate};
 use crate::error::{EXIT_CERTIFIED, EXIT_FEWER_DIGITS, Error};
-use crate::quantities::tail::{RouteChoice, Side, Status, TailRequest, TailResult};
-use crate::report::{self, Inputs, TailReport, json, text};
+use crate::packets::Boost;
+use crate::quantities::boosted_tail::BoostedTail;
+use crate::quantities::packet_tail::{PacketTail, TailPacket};
+use crate::quantities::question::Question;
+use crate::quantities::tail::{Side, Status, TailRequest, TailResult};
+use crate::report::{TailReport, json, text};
 use crate::scout;
 use clap::{Args, Subcommand, ValueEnum};
 use std::path::PathBuf;
@@ -34,6 +40,16 @@ pub(super) struct TailCommand {
 enum PacketCommand {
     /// Constant amplitude for |x| <= half-width, zero elsewhere
     Box(box_packet::BoxArguments),
+    /// Hard-wall eigenstate: cosine or sine for |x| <= half-width
+    Cosine(packets::CosineArguments),
+    /// B-spline on |x| <= half-width
+    Bspline(packets::BsplineArguments),
+    /// Uniform in a ball, three dimensions
+    Ball(packets::BallArguments),
+    /// Eigenstate of a spherical well, s-wave, three dimensions
+    Well(packets::WellArguments),
+    /// Gaussian, without an edge
+    Gaussian(packets::GaussianArguments),
 }
 
 /// Options of every packet.
@@ -55,9 +71,10 @@ struct TailArguments {
     /// Which side counts
     #[arg(long, value_enum, value_name = "SIDE", default_value = "both")]
     side: SideName,
-    /// Which of the two unrelated computations runs; with both, their intervals must meet
-    #[arg(long, value_enum, value_name = "ROUTE", default_value = "both")]
-    route: RouteName,
+    /// Which of the unrelated computations runs (kernel or spectral for compact packets); with both, their intervals must
+    /// meet
+    #[arg(long, value_name = "ROUTE", default_value = "both")]
+    route: String,
     /// Largest working precision in bits, 64 to 20000000 [default: 4000000]
     #[arg(long, value_name = "N", allow_hyphen_values = true)]
     max_bits: Option<String>,
@@ -82,63 +99,33 @@ enum SideName {
     Both,
 }
 
-#[derive(Clone, Copy, ValueEnum)]
-enum RouteName {
-    Kernel,
-    Spectral,
-    Both,
-}
-
 #[derive(Clone, Copy, PartialEq, Eq, ValueEnum)]
-enum FormatName {
+pub(super) enum FormatName {
     Text,
     Json,
 }
 
-impl TailCommand {
-    /// Reads the request, checks everything that can be checked, computes, reports.
-    pub(super) fn answer(&self) -> Result<Answer, Error> {
-        let (arguments, request) = match &self.packet {
-            PacketCommand::Box(arguments) => (&arguments.common, arguments.request()?),
-        };
-        if arguments.scout {
-            return arguments.estimate(&request);
-        }
-        if let Some(path) = &arguments.certificate {
-            certificate::check_writable(path)?;
-        }
-        arguments.certify(&request)
-    }
-}
-
-impl TailArguments {
-    /// Fills in the options that all packets share.
-    fn complete(&self, mut request: TailRequest) -> Result<TailRequest, Error> {
-        request.beyond = fields::beyond(Some(&self.beyond))?;
-        request.side = match self.side {
+impl SideName {
+    fn side(self) -> Side {
+        match self {
             SideName::Left => Side::Left,
             SideName::Right => Side::Right,
             SideName::Both => Side::Both,
-        };
-        request.routes = match self.route {
-            RouteName::Kernel => RouteChoice::Kernel,
-            RouteName::Spectral => RouteChoice::Spectral,
-            RouteName::Both => RouteChoice::Both,
-        };
-        request.digits = fields::digits(&self.digits)?;
-        request.max_bits = self.max_bits.as_deref().map(fields::max_bits).transpose()?;
-        request.time_limit = self.time_limit.as_deref().map(fields::time_limit).transpose()?;
-        request.validate()?;
-        Ok(request)
+        }
     }
+}
 
-    fn certify(&self, request: &TailRequest) -> Result<Answer, Error> {
-        let result = request.certify()?;
-        // A computation may have taken hours: it is printed even if its certificate fails.
-        let trouble = self.write_certificate(request, &result).err();
-        let mut report = TailReport::new(request, &result);
+impl FormatName {
+    /// The answer in this form; `trouble` is what went wrong after it was found.
+    pub(super) fn answer(
+        self,
+        question: &dyn Question,
+        result: &TailResult,
+        trouble: Option<Error>,
+    ) -> Result<Answer, Error> {
+        let mut report = TailReport::new(question, result);
         report.notes.extend(trouble.as_ref().map(|error| format!("no certificate was written: {error}")));
-        let text = match self.format {
+        let text = match self {
             FormatName::Text => text::result(&report),
             FormatName::Json => json::result(&report)?,
         };
@@ -148,8 +135,102 @@ impl TailArguments {
         };
         Ok(Answer { text, exit_code, trouble })
     }
+}
 
-    fn write_certificate(&self, request: &TailRequest, result: &TailResult) -> Result<(), Error> {
+impl TailCommand {
+    /// Reads the request, checks everything that can be checked, computes, reports.
+    pub(super) fn answer(&self) -> Result<Answer, Error> {
+        match &self.packet {
+            PacketCommand::Box(arguments) => arguments.answer(),
+            PacketCommand::Cosine(arguments) => arguments.answer(),
+            PacketCommand::Bspline(arguments) => arguments.answer(),
+            PacketCommand::Ball(arguments) => arguments.answer(),
+            PacketCommand::Well(arguments) => arguments.answer(),
+            PacketCommand::Gaussian(arguments) => arguments.answer(),
+        }
+    }
+}
+
+impl TailArguments {
+    /// Fills in the options that all packets share.
+    fn complete(&self, mut request: TailRequest) -> Result<TailRequest, Error> {
+        request.beyond = fields::beyond(Some(&self.beyond))?;
+        request.side = self.side.side();
+        request.routes = fields::route(&self.route)?;
+        request.digits = fields::digits(&self.digits)?;
+        request.max_bits = self.max_bits.as_deref().map(fields::max_bits).transpose()?;
+        request.time_limit = self.time_limit.as_deref().map(fields::time_limit).transpose()?;
+        request.validate()?;
+        Ok(request)
+    }
+
+    /// A request for a packet other than the box at rest.
+    fn request(&self, packet: Box<dyn TailPacket>) -> Result<PacketTail, Error> {
+        let mass = fields::exact("mass", &self.mass)?;
+        let time = fields::required("time", self.time.as_deref(), "--time 1")?;
+        let mut request = PacketTail::new(packet, mass, time);
+        request.beyond = fields::beyond(Some(&self.beyond))?;
+        request.side = self.side.side();
+        request.route = self.route.clone();
+        request.digits = fields::digits(&self.digits)?;
+        request.max_bits = self.max_bits.as_deref().map(fields::max_bits).transpose()?;
+        request.time_limit = self.time_limit.as_deref().map(fields::time_limit).transpose()?;
+        request.validate()?;
+        Ok(request)
+    }
+
+    /// The answer for a packet other than the box at rest.
+    fn answer(&self, packet: Box<dyn TailPacket>) -> Result<Answer, Error> {
+        if self.scout {
+            let wanted = "the quick estimate knows the box at rest only; leave the option out";
+            return Err(Error::bad_input("scout", packet.kind(), wanted));
+        }
+        self.certify(&self.request(packet)?)
+    }
+
+    /// The answer for a moving observer of the box.
+    fn answer_for_observer(
+        &self,
+        half_width: ExactInput,
+        boost: Boost,
+        boost_read: (&'static str, String),
+    ) -> Result<Answer, Error> {
+        if self.scout {
+            let wanted = "the quick estimate knows the box at rest only; leave the option out";
+            return Err(Error::bad_input("scout", "box", wanted));
+        }
+        if !matches!(self.side, SideName::Both) {
+            let wanted = "for a moving observer both sides count together; leave the option out";
+            return Err(Error::bad_input("side", self.side.side().name(), wanted));
+        }
+        let request = BoostedTail {
+            half_width,
+            mass: fields::exact("mass", &self.mass)?,
+            boost,
+            boost_read,
+            time: fields::required("time", self.time.as_deref(), "--time 0")?,
+            region: fields::boosted_region(&self.beyond)?,
+            digits: fields::digits(&self.digits)?,
+            route: self.route.clone(),
+            max_bits: self.max_bits.as_deref().map(fields::max_bits).transpose()?,
+            time_limit: self.time_limit.as_deref().map(fields::time_limit).transpose()?,
+        };
+        request.validate()?;
+        self.certify(&request)
+    }
+
+    /// Computes, reports, writes the certificate.
+    fn certify(&self, request: &dyn Question) -> Result<Answer, Error> {
+        if let Some(path) = &self.certificate {
+            certificate::check_writable(path)?;
+        }
+        let result = request.certify()?;
+        // A computation may have taken hours: it is printed even if its certificate fails.
+        let trouble = self.write_certificate(request, &result).err();
+        self.format.answer(request, &result, trouble)
+    }
+
+    fn write_certificate(&self, request: &dyn Question, result: &TailResult) -> Result<(), Error> {
         match &self.certificate {
             Some(path) => Certificate::new(request, result)?.write(path),
             None => Ok(()),
@@ -158,10 +239,10 @@ impl TailArguments {
 
     fn estimate(&self, request: &TailRequest) -> Result<Answer, Error> {
         let scout = scout::estimate(request)?;
-        let inputs = Inputs::from(request);
+        let inputs = request.inputs();
         Ok(Answer::plain(match self.format {
-            FormatName::Text => text::scout(&report::in_words(request), &inputs, &scout),
-            FormatName::Json => json::scout(&report::quantity(request), &inputs, &scout)?,
+            FormatName::Text => text::scout(&request.words(), &inputs, &scout),
+            FormatName::Json => json::scout(&request.formula(), &inputs, &scout)?,
         }))
     }
 }

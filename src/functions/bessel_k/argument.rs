@@ -6,8 +6,10 @@
 //! `floor(sqrt(floor(y))) = floor(sqrt(y))`.
 
 use super::factor::{Factor, shifted};
+use super::limbs::Limbs;
 use crate::arithmetic::{Bits, Real};
 use crate::functions::elementary;
+use rug::integer::Order;
 use rug::{Float, Integer, Rational};
 
 /// An exact positive number.
@@ -26,7 +28,50 @@ struct Ratio {
     shift: i64,
 }
 
+/// `x^2/4 = fraction * 2^exponent` in few words.
+pub(super) struct QuarterSquare<const N: usize> {
+    pub(super) exponent: i64,
+    /// In `[1/2, 1)`, rounded down.
+    pub(super) fraction: Limbs<N>,
+    /// Whether nothing was lost by rounding; if something was, less than one unit.
+    pub(super) is_exact: bool,
+}
+
 impl Argument<'_> {
+    /// `x^2/4` in few words.
+    ///
+    /// For `p/q` normalise both to `2^63 <= p', q' < 2^64` (words), or divide integers with enough
+    /// zeros appended; each word of the quotient is exact and the remainder tells whether more follow.
+    pub(super) fn short_quarter_square<const N: usize>(&self) -> QuarterSquare<N> {
+        if let Argument::RootOf(square) = self
+            && let (Some(p), Some(q)) = (square.numer().to_u64(), square.denom().to_u64())
+        {
+            return quotient_of_words(p, q);
+        }
+        let square = self.square();
+        let (above, below) = (square.numerator.significant_bits(), square.denominator.significant_bits());
+        // The quotient below has as many bits as a fraction, or one more.
+        let appended = i64::from(Limbs::<N>::FRACTION_BITS) + i64::from(below) - i64::from(above);
+        let (mut quotient, rest) = if square.denominator == 1 {
+            let quotient = shifted(&square.numerator, appended);
+            let lost = appended < 0 && square.numerator.find_one(0).map(i64::from) < Some(-appended);
+            (quotient, lost)
+        } else if appended >= 0 {
+            let (quotient, rest) = shifted(&square.numerator, appended).div_rem(square.denominator);
+            (quotient, rest != 0)
+        } else {
+            let (quotient, _) = shifted(&square.numerator, appended).div_rem(square.denominator);
+            (quotient, true)
+        };
+        let extra = quotient.significant_bits().saturating_sub(Limbs::<N>::FRACTION_BITS);
+        let lost = rest || (extra > 0 && quotient.find_one(0) < Some(extra));
+        quotient >>= extra;
+        let mut fraction = [0; N];
+        quotient.write_digits(&mut fraction, Order::Lsf);
+        let exponent = square.shift - appended + i64::from(extra) + i64::from(Limbs::<N>::FRACTION_BITS) - 2;
+        QuarterSquare { exponent, fraction: Limbs(fraction), is_exact: !lost }
+    }
+
     /// `log2(x)`, for choosing methods and precisions only.
     pub(super) fn log2_estimate(&self) -> f64 {
         match self {
@@ -141,6 +186,22 @@ impl Argument<'_> {
     }
 }
 
+/// `p/(4q)` for positive words.
+fn quotient_of_words<const N: usize>(p: u64, q: u64) -> QuarterSquare<N> {
+    let (p_zeros, q_zeros) = (p.leading_zeros(), q.leading_zeros());
+    let (top, divisor) = (p << p_zeros, q << q_zeros);
+    // The quotient of the normalised words is in (1/2, 2); below one it is what is wanted.
+    let halved = top >= divisor;
+    let mut rest = u128::from(top) << 63 << u32::from(!halved);
+    let mut fraction = [0; N];
+    for word in fraction.iter_mut().rev().skip(1) {
+        *word = (rest / u128::from(divisor)) as u64;
+        rest = (rest % u128::from(divisor)) << 64;
+    }
+    let exponent = i64::from(q_zeros) - i64::from(p_zeros) + i64::from(halved) - 2;
+    QuarterSquare { exponent, fraction: Limbs(fraction), is_exact: rest == 0 }
+}
+
 fn log2_of(value: &Integer) -> f64 {
     let (fraction, exponent) = value.to_f64_exp();
     fraction.log2() + f64::from(exponent)
@@ -150,4 +211,35 @@ fn log2_of(value: &Integer) -> f64 {
 fn odd_part(value: &Integer) -> (Integer, i64) {
     let zeros = value.find_one(0).unwrap_or(0);
     (Integer::from(value >> zeros), i64::from(zeros))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn check<const N: usize>(x: &Argument, square: &Rational) {
+        let found = x.short_quarter_square::<N>();
+        assert!(found.fraction.whole() == 0 && found.fraction.first_fraction_word() >> 63 == 1);
+        // x^2/4 in units of the last place of the fraction.
+        let scale = i64::from(Limbs::<N>::FRACTION_BITS) - found.exponent - 2;
+        let scaled = (square.clone() << scale.max(0) as u32) >> (-scale).max(0) as u32;
+        let short = scaled - found.fraction.to_integer();
+        assert!((0..1).contains(&short) && found.is_exact == (short == 0), "{square} {short}");
+    }
+
+    proptest::proptest! {
+        #[test]
+        fn quarter_squares(
+            p in 1u128.., q in 1u128.., cut in 0u32..128, up in 0u32..300, down in 0u32..300, odd in 0u32..128
+        ) {
+            let (p, q) = ((p >> cut).max(1), (q >> odd).max(1));
+            let square = (Rational::from((Integer::from(p), Integer::from(q))) << up) >> down;
+            check::<3>(&Argument::RootOf(&square), &square);
+            check::<7>(&Argument::RootOf(&square), &square);
+            let number = (Float::with_val(128, p) << up) >> down;
+            let exact = number.to_rational().unwrap().square();
+            check::<3>(&Argument::Number(&number), &exact);
+            check::<6>(&Argument::Number(&number), &exact);
+        }
+    }
 }

@@ -38,7 +38,7 @@
 //! `|z|` on the ball the first bound of `B_1` at that point is at most
 //! `(pi/2)^{1/2} (1 + 3/8) < 2 <= 1/s + s^{1/2}`.
 
-use super::{GUARD_BITS, Method, complex_asymptotic, complex_series, trapezoid};
+use super::{FEWEST_BITS, GUARD_BITS, MOST_BITS, Method, complex_asymptotic, complex_series, trapezoid};
 use crate::arithmetic::{Bits, Complex, Magnitude, Real};
 use crate::functions::complex_elementary::{self, whole_plane};
 use crate::functions::elementary;
@@ -63,20 +63,21 @@ pub fn k_complex(order: u32, z: &Complex, bits: Bits) -> Complex {
         return Complex::from_real(super::k(order, &z.re, bits));
     }
     let size = z.norm_squared(64).to_f64().sqrt();
-    k_complex_by(Method::for_size(size, bits.max(8)), order, z, bits)
+    k_complex_by(Method::for_size(size, bits.clamp(FEWEST_BITS, MOST_BITS)), order, z, bits)
 }
 
 /// `K_order(z)` by the method named, for comparisons; otherwise as [`k_complex`].
 ///
 /// Outside the domain of the method the result is the whole plane; where it converges badly the
-/// result is wide. [`Method::Trapezoid`] works for orders up to two.
+/// result is wide. [`Method::Trapezoid`] works for orders up to two, [`Method::ShortSeries`] never.
 pub fn k_complex_by(method: Method, order: u32, z: &Complex, bits: Bits) -> Complex {
-    let bits = bits.max(8);
+    let bits = bits.clamp(FEWEST_BITS, MOST_BITS);
     if !is_in_domain(z) {
         return whole_plane();
     }
     let middle = midpoint(z);
     let value = match method {
+        Method::ShortSeries => whole_plane(),
         Method::Trapezoid => trapezoid::value(order, &middle, bits),
         Method::Series => upwards(order, complex_series::values(&middle, order_bits(order, bits)), &middle, bits),
         Method::Asymptotic => match complex_asymptotic::scaled_values(&middle, order_bits(order, bits)) {
@@ -101,7 +102,7 @@ fn midpoint(z: &Complex) -> Complex {
 
 /// Bits for orders zero and one so that the recurrence leaves enough.
 fn order_bits(order: u32, bits: Bits) -> Bits {
-    bits.saturating_add(4).saturating_add(2 * order)
+    bits.saturating_add(4).saturating_add(order.saturating_mul(2)).min(2 * MOST_BITS)
 }
 
 /// From scaled to plain values.

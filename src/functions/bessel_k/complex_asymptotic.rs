@@ -27,9 +27,9 @@
 //! [`super::complex_fixed`] and `r_k = (2k-1)^2/(8 |z| k)`,
 //! `d_k <= r_k d_{k-1} + (3 |B| (2k-1)^2 2^-f + sqrt 2)/k + sqrt 2`. Up to `k = floor(2|z|)`,
 //! beyond which the loop never goes, `r_k <= 1` and `|b_k| <= 1`, and `3 |B| (2k-1)^2 2^-f <= 1` by
-//! the choice of `f`: `d_k <= 4k`. A term of `K_1` is rounded once more: off by at most
-//! `4k (2k+1)/(2k-1) + sqrt 2 <= 14 k`. The sums with terms up to `N` are off by at most
-//! `2 N(N+1)` and `7 N(N+1)` units.
+//! the choice of `f`, also after it is shortened (`ComplexFactor::shorten`): `d_k <= 4k`. A term of
+//! `K_1` is rounded once more: off by at most `4k (2k+1)/(2k-1) + sqrt 2 <= 14 k`. The sums with
+//! terms up to `N` are off by at most `2 N(N+1)` and `7 N(N+1)` units.
 
 use super::complex_fixed::{ComplexFactor, FixedComplex};
 use crate::arithmetic::{Bits, Complex, Magnitude, Real, rounding};
@@ -85,7 +85,7 @@ fn sum(mut factor: ComplexFactor, fraction_bits: Bits, most: u64, square_bits: B
             order_0.sub(&term);
             order_1.add(&scratch);
         }
-        factor.shorten(term.length() + square_bits);
+        factor.shorten(term.length(), square_bits);
     }
     // Terms up to k - 1 are summed; the first one left out, three times as much for order one.
     let next = Magnitude::power_of_two(i64::from(term.length())).add(Magnitude::from_u64(4 * k));

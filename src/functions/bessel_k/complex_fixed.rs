@@ -83,7 +83,8 @@ impl FixedComplex {
 
 /// A complex number that multiplies fixed-point numbers.
 ///
-/// The stored number differs from the one meant by less than `3 * 2^-fraction_bits`.
+/// The stored number differs from the one meant by less than `3 * 2^-fraction_bits`: two units in
+/// each part at first, and after bits are dropped `3 * 2^-64 + sqrt(2)` of the new units.
 #[derive(Clone, Debug)]
 pub(super) struct ComplexFactor {
     value: FixedComplex,
@@ -111,11 +112,19 @@ impl ComplexFactor {
         term.im.assign(&scratch.im >> self.fraction_bits);
     }
 
-    /// Drops bits that no longer matter for terms below `2^term_bits`: for these,
-    /// `3 |term| 2^-fraction_bits <= 1` still holds.
-    pub(super) fn shorten(&mut self, term_bits: Bits) {
+    /// Drops bits that no longer matter for the term computed last, below `2^term_bits` with its
+    /// multiplier below `2^multiplier_bits`, and for those after it: for these,
+    /// `3 |term| multiplier 2^-fraction_bits <= 1` still holds.
+    ///
+    /// Exact terms fall from there on, but computed ones need not: with errors up to `4k + 2` units
+    /// each, a later one may be larger by `8k + 4`, which is below `2^40` for `k < 2^36`. So a term
+    /// counts as `2^40` at least, its successors are below twice that power, and
+    /// `3 * 2 * 2^-3 <= 1`.
+    pub(super) fn shorten(&mut self, term_bits: Bits, multiplier_bits: Bits) {
         const LIMB: u32 = 64;
-        let spare = self.fraction_bits.saturating_sub(term_bits + 3) / LIMB * LIMB;
+        const LEAST_BITS: Bits = 40;
+        let needed = term_bits.max(LEAST_BITS) + multiplier_bits + 3;
+        let spare = self.fraction_bits.saturating_sub(needed) / LIMB * LIMB;
         if spare > 0 {
             self.value.drop_bits(spare);
             self.fraction_bits -= spare;

@@ -37,11 +37,13 @@
 //! up to `M`, `|t_k| >= 1 - 2^-50` and `|w| >= 1 - 2^-50`, so `e_k/|t_k|` grows by at most
 //! `(1 + 2 sqrt 2)(1 + 2^-49) < 4`: `e_k <= 4 k |t_k|`. With `S = |t_0| + ... + |t_M|` the errors
 //! of `P_k, Q_k, A_k, Q'_k, B_k` are at most `4kS`, `4kS + 2k`, `4S + 2(k+1)`, `k(4S + 3)`,
-//! `4S + 3(k+1)`.
+//! `4S + 3(k+1)`. (For `Q'`: `A_0` is exact and `A_{j-1}` off by `4S + sqrt(2) (j-1)`, so that the
+//! terms are off by `sqrt 2` for `j = 1` and `4S/j + 2 sqrt(2)` after it.)
 //!
 //! *The change* divides by `2^g >= e^{|z|} >= S` and adds `sqrt 2`.
 //!
-//! *From `M` on* `|w|/k^2 <= 1` and `3 |T| 2^-f <= 1`, so `e_k <= 4k + 2`, and by summation the
+//! *From `M` on* `|w|/k^2 <= 1` and `3 |T| 2^-f <= 1` (at first as `|t_k| <= S <= 2^g`, later by
+//! `ComplexFactor::shorten`), so `e_k <= 4k + 2`, and by summation the
 //! errors are at most
 //!
 //! ```text
@@ -136,7 +138,7 @@ fn sum(plan: &Plan, mut factor: ComplexFactor) -> Sums {
         if is_active(Fault::BesselSeriesCut) && term.length() < plan.fraction_bits / 2 {
             return Sums { p, q, a, q_of_a, b, last: k, last_term: Magnitude::ZERO };
         }
-        factor.shorten(term.length());
+        factor.shorten(term.length(), 0);
     }
 }
 

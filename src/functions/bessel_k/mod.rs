@@ -9,25 +9,30 @@
 //!
 //! | module | arguments | error bound |
 //! |---|---|---|
+//! | [`short_series`] | up to 32, up to some 500 bits: the fastest there | geometric tail |
 //! | [`series`], [`complex_series`] | best for `2 abs(x) < bits ln 2` | geometric tail |
 //! | [`asymptotic`], [`complex_asymptotic`] | `2 abs(x) > bits ln 2` | the first term left out |
 //! | [`trapezoid`] | right half-plane, for comparison | integral along the edge of a strip |
 //!
 //! Doubles choose the method; each one proves its own error bound, so that a wrong choice would
-//! only be slow or wide. The two series run in fixed point with all roundings counted
-//! ([`factor`], [`complex_fixed`]). Orders above one come from `K_{n+1} = K_{n-1} + (2n/x) K_n`
+//! only be slow or wide. The series run in fixed point with all roundings counted ([`factor`],
+//! [`complex_fixed`], [`limbs`]). Orders above one come from `K_{n+1} = K_{n-1} + (2n/x) K_n`
 //! (DLMF 10.29.1), for `x > 0` a sum of positive numbers. How balls are treated is described in
 //! [`positive`] and [`complex`].
 
 pub mod argument;
 pub mod asymptotic;
+pub mod coefficients;
 pub mod complex;
 pub mod complex_asymptotic;
 pub mod complex_fixed;
 pub mod complex_series;
 pub mod factor;
+pub mod limbs;
 pub mod positive;
 pub mod series;
+pub mod short_logarithm;
+pub mod short_series;
 pub mod trapezoid;
 
 pub use complex::{k_complex, k_complex_by};
@@ -39,10 +44,15 @@ use rug::Rational;
 
 /// Additional bits of intermediate results.
 const GUARD_BITS: Bits = 12;
+/// Fewer bits than this are taken as so many; more than the largest as that.
+const FEWEST_BITS: Bits = 8;
+const MOST_BITS: Bits = 1 << 26;
 
 /// A way to evaluate `K_nu`.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Method {
+    /// Power series in a few machine words, for real arguments below 32 and at most some 500 bits.
+    ShortSeries,
     /// Power series.
     Series,
     /// Series for large arguments, of absolute value at least one.

@@ -32,7 +32,7 @@
 //! Wide balls are evaluated at both ends.
 
 use super::argument::Argument;
-use super::{GUARD_BITS, Method, asymptotic, series, trapezoid};
+use super::{FEWEST_BITS, GUARD_BITS, MOST_BITS, Method, asymptotic, series, short_series, trapezoid};
 use crate::arithmetic::{Bits, Complex, Interval, Magnitude, Real};
 use crate::functions::elementary;
 use rug::Float;
@@ -68,7 +68,7 @@ pub(super) struct Request {
 
 impl Request {
     pub(super) fn new(bits: Bits, scaling: Scaling) -> Request {
-        Request { bits: bits.max(8), scaling, method: None }
+        Request { bits: bits.clamp(FEWEST_BITS, MOST_BITS), scaling, method: None }
     }
 }
 
@@ -79,14 +79,18 @@ fn nothing_known() -> (Real, Real) {
 /// `K_0(x)` and the other value wanted, scaled alike, at an exact argument.
 pub(super) fn exact_pair(x: &Argument, request: Request, second: SecondValue) -> (Real, Real) {
     let bits = request.bits;
+    if matches!(request.method, None | Some(Method::ShortSeries)) {
+        if let Some(values) = short_series::values(x, bits) {
+            return from_series(values, x, request, second);
+        }
+        if request.method.is_some() {
+            return nothing_known();
+        }
+    }
     match request.method.unwrap_or_else(|| Method::for_size(x.estimate(), bits)) {
-        Method::Series => {
+        Method::ShortSeries | Method::Series => {
             let values = series::values(x, bits);
-            let (k0, quotient) = rescale((values.k0, values.k1_over_x), x, bits, request.scaling == Scaling::Scaled, 1);
-            match second {
-                SecondValue::OrderOne => (k0, quotient.mul(&x.ball(bits + GUARD_BITS), bits + 8)),
-                SecondValue::QuotientByArgument => (k0, quotient),
-            }
+            from_series((values.k0, values.k1_over_x), x, request, second)
         }
         Method::Asymptotic => {
             let Some(values) = asymptotic::scaled_values(x, bits) else { return nothing_known() };
@@ -105,6 +109,16 @@ pub(super) fn exact_pair(x: &Argument, request: Request, second: SecondValue) ->
                 SecondValue::QuotientByArgument => (k0, k1.div(&z.re, bits + 8)),
             }
         }
+    }
+}
+
+/// From `K_0(x)` and `K_1(x)/x` to what is wanted.
+fn from_series(values: (Real, Real), x: &Argument, request: Request, second: SecondValue) -> (Real, Real) {
+    let bits = request.bits;
+    let (k0, quotient) = rescale(values, x, bits, request.scaling == Scaling::Scaled, 1);
+    match second {
+        SecondValue::OrderOne => (k0, quotient.mul(&x.ball(bits + GUARD_BITS), bits + 8)),
+        SecondValue::QuotientByArgument => (k0, quotient),
     }
 }
 

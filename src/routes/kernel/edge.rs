@@ -72,7 +72,7 @@ pub(super) fn integral(
     carry: &Carry,
     effort: &Effort,
 ) -> Result<Real, RouteFailure> {
-    let mut parts = logarithmic(problem, plan, carry, effort)?;
+    let mut parts = logarithmic(&problem.time, &plan.to, (plan.terms, plan.scale), &carry.near, effort)?;
     subtract_shifted(&mut parts, problem, plan, carry, effort)?;
     let unit = Magnitude::power_of_two(-i64::from(plan.scale));
     let size = |list: &[Integer]| {
@@ -83,21 +83,22 @@ pub(super) fn integral(
     let bound = size(&parts.regular).max(size(&parts.logarithm));
     let slack = bound.shift(1).add(error).mul(error).mul(Magnitude::from_u64(5));
     let bits = plan.scale + 64;
-    let moments = moments(&parts, plan, bits).widen(slack);
+    let start = Rational::from(&plan.from / &plan.to);
+    let moments = moments(&parts.regular, &parts.logarithm, &start, plan.scale, bits).widen(slack);
     let weight = (&plan.to / Rational::from(problem.time.square_ref())) / 4;
     Ok(moments.mul(&Real::from_rational(&weight, bits), bits))
 }
 
 /// `C` and `B` in units of `2^-scale`.
-struct Parts {
-    regular: Vec<Integer>,
-    logarithm: Vec<Integer>,
+pub(in crate::routes) struct Parts {
+    pub regular: Vec<Integer>,
+    pub logarithm: Vec<Integer>,
     /// Bound of the sum of the errors of `regular`, in units.
-    regular_error: Magnitude,
+    pub regular_error: Magnitude,
     /// The same for `logarithm`.
-    logarithm_error: Magnitude,
+    pub logarithm_error: Magnitude,
     /// Bound of everything cut off, in absolute terms.
-    truncation: Magnitude,
+    pub truncation: Magnitude,
 }
 
 /// An integer and the bound of its error, both in units.
@@ -189,21 +190,26 @@ impl Ratios {
     }
 }
 
-/// The series of `2 t F`, with its constant.
-fn logarithmic(problem: &TailProblem, plan: &EdgePlan, carry: &Carry, effort: &Effort) -> Result<Parts, RouteFailure> {
-    let scale = plan.scale;
-    let ratios = Ratios::new(&problem.time, &plan.to);
+/// The series of `2 t F` in `y = s/width`, with its constant: the value `right` of `F` at `y = 1`.
+pub(in crate::routes) fn logarithmic(
+    time: &Rational,
+    width: &Rational,
+    (terms, scale): (usize, u32),
+    right: &Real,
+    effort: &Effort,
+) -> Result<Parts, RouteFailure> {
+    let ratios = Ratios::new(time, width);
     let one = Coefficient { value: Integer::from(1) << scale, error: Magnitude::ZERO };
     let zero = Coefficient::zero();
     let bits = scale + 64;
-    let chi = Real::from_rational(&(Rational::from(&problem.time * &plan.to) / 2), bits);
+    let chi = Real::from_rational(&(Rational::from(time * width) / 2), bits);
     let start = chi.mul(&ln(&chi, bits).add(&euler_gamma(bits).shift(1), bits), bits).neg();
     // Entries (n-2, n-1) of g and n-1 of k, for the regular (a) and logarithmic (b) parts.
     let (mut ga, mut gb) = ([zero.clone(), one.clone()], [zero.clone(), zero.clone()]);
     let (mut ka, mut kb) = (zero.clone(), zero.clone());
-    let mut series = [Vec::with_capacity(plan.terms), Vec::with_capacity(plan.terms)];
+    let mut series = [Vec::with_capacity(terms), Vec::with_capacity(terms)];
     let mut errors = [Magnitude::ZERO, Magnitude::ZERO];
-    for n in 0..plan.terms as u64 {
+    for n in 0..terms as u64 {
         if n % 64 == 0 {
             effort.check()?;
         }
@@ -233,8 +239,8 @@ fn logarithmic(problem: &TailProblem, plan: &EdgePlan, carry: &Carry, effort: &E
         advance(&mut gb, next_gb);
     }
     let [mut regular, logarithm] = series;
-    let truncation = truncation(&problem.time, &plan.to, plan.terms).mul(magnitude_of(&problem.time).shift(1));
-    let right = Coefficient::from_real(&doubled(&carry.near, &problem.time, bits), scale)?;
+    let truncation = truncation(time, width, terms).mul(magnitude_of(time).shift(1));
+    let right = Coefficient::from_real(&doubled(right, time, bits), scale)?;
     let sum: Integer = regular.iter().sum();
     regular[0] = right.value - sum;
     Ok(Parts {
@@ -288,12 +294,18 @@ fn subtract_shifted(
     Ok(())
 }
 
-/// `Int (C + B ln y)^2 dy` over the panel, for the coefficients as they are.
-fn moments(parts: &Parts, plan: &EdgePlan, bits: Bits) -> Real {
-    let kept = parts.logarithm.iter().rposition(|b| *b != 0).map_or(0, |last| last + 1);
-    let logarithm = &parts.logarithm[..kept];
-    let squares = signed_product(&parts.regular, &parts.regular);
-    let mixed = signed_product(&parts.regular, logarithm);
+/// `Int_start^1 (C + B ln y)^2 dy` for the coefficients as they are, in units of `2^-scale`.
+pub(in crate::routes) fn moments(
+    regular: &[Integer],
+    logarithm: &[Integer],
+    start: &Rational,
+    scale: u32,
+    bits: Bits,
+) -> Real {
+    let kept = logarithm.iter().rposition(|b| *b != 0).map_or(0, |last| last + 1);
+    let logarithm = &logarithm[..kept];
+    let squares = signed_product(regular, regular);
+    let mixed = signed_product(regular, logarithm);
     let logs = signed_product(logarithm, logarithm);
     let none = Integer::new();
     let mut total = Integer::new();
@@ -305,19 +317,19 @@ fn moments(parts: &Parts, plan: &EdgePlan, bits: Bits) -> Real {
         sum += Integer::from(logs.get(index).unwrap_or(&none) << 1);
         total += (sum << GUARD) / (Integer::from(m).square() * m);
     }
-    let unit = -2 * i64::from(plan.scale) - i64::from(GUARD);
+    let unit = -2 * i64::from(scale) - i64::from(GUARD);
     let cuts = Magnitude::from_u64(squares.len() as u64).shift(unit);
     let whole = Real::from_scaled(&total, unit).round(bits).widen(cuts);
-    if plan.from == 0 {
+    if *start == 0 {
         return whole;
     }
-    let start = Real::from_rational(&Rational::from(&plan.from / &plan.to), bits);
+    let start = Real::from_rational(start, bits);
     let log = ln(&start, bits);
     let mut power = start.clone();
     let mut below = Real::zero();
     for (index, square) in squares.iter().enumerate() {
         let m = index as u64 + 1;
-        let scaled = |value: &Integer| Real::from_scaled(value, -2 * i64::from(plan.scale)).round(bits);
+        let scaled = |value: &Integer| Real::from_scaled(value, -2 * i64::from(scale)).round(bits);
         let first = log.sub(&Real::from_i64(1).div_u64(m, bits), bits);
         let second = log.mul(&first, bits).add(&first.sub(&log, bits).div_u64(m, bits).neg().shift(1), bits);
         let second = second.sub(&log.div_u64(m, bits), bits);
@@ -376,7 +388,7 @@ fn best_radius(t: f64, sigma: f64, terms: f64) -> f64 {
 }
 
 /// Number of terms after which the truncation bound of `2 t F` is below `exp(goal)`.
-pub(super) fn terms_for(t: f64, sigma: f64, goal: f64) -> usize {
+pub(in crate::routes) fn terms_for(t: f64, sigma: f64, goal: f64) -> usize {
     let goal = goal - (2.0 * t).ln();
     let reached = |terms: f64| log_truncation(t, sigma, best_radius(t, sigma, terms), terms) < goal;
     let mut high = 8.0;

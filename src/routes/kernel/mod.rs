@@ -43,11 +43,11 @@
 //!
 //! For mass zero see [`massless`]: closed form with the dilogarithm.
 
-mod edge;
+pub(in crate::routes) mod edge;
 mod massless;
-mod panel;
-mod plan;
-mod squares;
+pub(in crate::routes) mod panel;
+pub(in crate::routes) mod plan;
+pub(in crate::routes) mod squares;
 
 use super::{Effort, Route, RouteFailure, RouteOutcome, TailProblem};
 use crate::arithmetic::{Bits, Interval, Magnitude, Real, decimal};
@@ -64,17 +64,21 @@ pub struct Kernel;
 pub const KERNEL: Kernel = Kernel;
 
 /// Precision in which error bounds are evaluated; they need few digits.
-const BOUND_BITS: Bits = 64;
+pub(in crate::routes) const BOUND_BITS: Bits = 64;
 /// From this precision on, panels are worth a thread of their own.
-const PARALLEL_FROM: u32 = 700;
+pub(in crate::routes) const PARALLEL_FROM: u32 = 700;
 
 impl Route for Kernel {
     fn name(&self) -> &'static str {
         "kernel"
     }
 
-    fn method(&self) -> &'static str {
-        "Newton-Wigner propagator in position space, Taylor panels by recurrence, logarithmic series at the cone"
+    fn method(&self, problem: &TailProblem) -> &'static str {
+        if problem.massless {
+            "Newton-Wigner propagator in position space, closed form with the dilogarithm"
+        } else {
+            "Newton-Wigner propagator in position space, Taylor panels by recurrence, logarithmic series at the cone"
+        }
     }
 
     fn evaluate(&self, problem: &TailProblem, digits: u32, effort: &Effort) -> Result<RouteOutcome, RouteFailure> {
@@ -185,7 +189,7 @@ fn unknown_below(bound: Magnitude) -> Real {
 }
 
 /// Lemma K2 at `v = t + s`, infinite if `s` is not positive.
-pub(super) fn function_bound(time: &Rational, s: &Rational) -> Magnitude {
+pub(in crate::routes) fn function_bound(time: &Rational, s: &Rational) -> Magnitude {
     if *s <= 0 {
         return Magnitude::INFINITY;
     }
@@ -197,7 +201,7 @@ pub(super) fn function_bound(time: &Rational, s: &Rational) -> Magnitude {
 }
 
 /// `r = sqrt(s (s + 2t))`.
-fn separation(time: &Rational, s: &Rational) -> Real {
+pub(in crate::routes) fn separation(time: &Rational, s: &Rational) -> Real {
     let square = (s + Rational::from(time * 2)) * s;
     sqrt(&Real::from_rational(&square, BOUND_BITS), BOUND_BITS)
 }

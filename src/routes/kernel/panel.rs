@@ -40,7 +40,7 @@ use crate::routes::{Effort, RouteFailure};
 use rug::{Assign, Integer, Rational};
 
 /// `F` on a panel up to its constant.
-pub(super) struct PanelSeries {
+pub(in crate::routes) struct PanelSeries {
     /// `F_n` in units of `2^-scale`; the entry at zero is zero.
     coefficients: Vec<Integer>,
     /// Bound of the sum of all errors of the other coefficients, truncation included.
@@ -48,7 +48,7 @@ pub(super) struct PanelSeries {
 }
 
 /// `F` on a panel with its constant.
-pub(super) struct Anchored {
+pub(in crate::routes) struct Anchored {
     /// `F_n` in units of `2^-scale`.
     pub coefficients: Vec<Integer>,
     /// Bound of the error anywhere on the panel.
@@ -89,7 +89,7 @@ impl PanelSeries {
     }
 
     /// The series about `v = time + s`, `|v - time - s| <= half`.
-    pub(super) fn about(
+    pub(in crate::routes) fn about(
         time: &Rational,
         s: &Rational,
         half: &Rational,
@@ -97,28 +97,24 @@ impl PanelSeries {
         terms: usize,
         effort: &Effort,
     ) -> Result<PanelSeries, RouteFailure> {
-        let tail = truncation(time, s, half, terms);
+        let tail = truncation(time, s, half, terms as u64 + 1, function_bound);
         let unit = Magnitude::power_of_two(-i64::from(scale));
         if terms <= 2 && tail.cmp_value(unit).is_le() {
             // Everything is below one unit.
             return Ok(PanelSeries { coefficients: vec![Integer::new()], error: full_size(time, s, half) });
         }
-        let square = (s + Rational::from(time * 2)) * s;
-        let wide = Real::from_rational(half, scale + 64);
-        let (k, g) = start_values(&square, half, scale);
-        let (k, k_error) = fixed(&k.mul(&wide, scale + 64), scale)?;
-        let (g, g_error) = fixed(&g.mul(&wide, scale + 64), scale)?;
-        let integers = Integers::new(time, s, half);
-        let coefficients = recurrence(&integers, g, k, terms, effort)?;
-        let spread = amplification(time, s, half);
-        let count = Magnitude::from_u64(terms as u64);
-        let sources = spread.balance.mul(g_error.add(count.mul(spread.sharpness))).add(k_error).add(count);
-        let units = spread.growth.mul(sources).div(spread.balance_below).add(count);
+        let mut coefficients = Vec::with_capacity(terms + 1);
+        coefficients.push(Integer::new());
+        let units = kernel_terms((time, s, half), scale, terms, effort, |g, n| {
+            let next = Integer::from(g / (n + 1));
+            coefficients.push(-next);
+        })?;
+        let units = units.add(Magnitude::from_u64(terms as u64));
         Ok(PanelSeries { coefficients, error: units.mul(unit).add(tail) })
     }
 
     /// Adds the constant that makes the value at the right end equal to `right`.
-    pub(super) fn anchored(&self, right: &Real, scale: u32) -> Result<Anchored, RouteFailure> {
+    pub(in crate::routes) fn anchored(&self, right: &Real, scale: u32) -> Result<Anchored, RouteFailure> {
         let (value, radius) = fixed(right, scale)?;
         let unit = Magnitude::power_of_two(-i64::from(scale));
         let mut coefficients = self.coefficients.clone();
@@ -138,13 +134,52 @@ impl PanelSeries {
     }
 }
 
+/// `half * g` about `v = time + s` in powers of `(v - time - s)/half`: coefficients in units of `2^-scale` and the
+/// bound of the sum of their errors, truncation included. `bound` bounds `g` at `v = time + s`; as for `F`,
+/// `|g_n| <= g(v_c - rho' w) rho'^-n`.
+pub(in crate::routes) fn kernel_series(
+    place: (&Rational, &Rational, &Rational),
+    scale: u32,
+    terms: usize,
+    bound: impl Fn(&Rational, &Rational) -> Magnitude,
+    effort: &Effort,
+) -> Result<(Vec<Integer>, Magnitude), RouteFailure> {
+    let (time, s, half) = place;
+    let tail = truncation(time, s, half, terms as u64, bound);
+    let mut coefficients = Vec::with_capacity(terms);
+    let units = kernel_terms(place, scale, terms, effort, |g, _| coefficients.push(g.clone()))?;
+    let width = Real::from_rational(half, BOUND_BITS).abs_upper();
+    Ok((coefficients, units.shift(-i64::from(scale)).add(tail.mul(width))))
+}
+
+/// Shows every coefficient of `half * g` to `visit`, and bounds the sum of their errors in units.
+fn kernel_terms(
+    (time, s, half): (&Rational, &Rational, &Rational),
+    scale: u32,
+    terms: usize,
+    effort: &Effort,
+    visit: impl FnMut(&Integer, u64),
+) -> Result<Magnitude, RouteFailure> {
+    let square = (s + Rational::from(time * 2)) * s;
+    let wide = Real::from_rational(half, scale + 64);
+    let (k, g) = start_values(&square, half, scale);
+    let (k, k_error) = fixed(&k.mul(&wide, scale + 64), scale)?;
+    let (g, g_error) = fixed(&g.mul(&wide, scale + 64), scale)?;
+    let integers = Integers::new(time, s, half);
+    recurrence(&integers, g, k, terms, effort, visit)?;
+    let spread = amplification(time, s, half);
+    let count = Magnitude::from_u64(terms as u64);
+    let sources = spread.balance.mul(g_error.add(count.mul(spread.sharpness))).add(k_error).add(count);
+    Ok(spread.growth.mul(sources).div(spread.balance_below))
+}
+
 /// `F` on the whole panel when no coefficient is kept: the variation is at most the value at its
 /// left end, which Lemma K2 bounds.
 fn full_size(time: &Rational, s: &Rational, half: &Rational) -> Magnitude {
     function_bound(time, &Rational::from(s - half))
 }
 
-pub(super) fn fixed(value: &Real, scale: u32) -> Result<(Integer, Magnitude), RouteFailure> {
+pub(in crate::routes) fn fixed(value: &Real, scale: u32) -> Result<(Integer, Magnitude), RouteFailure> {
     value.to_fixed(i64::from(scale)).ok_or_else(|| RouteFailure::OutOfReach {
         reason: "a start value of the kernel route has no finite enclosure".to_owned(),
     })
@@ -159,17 +194,16 @@ fn start_values(square: &Rational, half: &Rational, scale: u32) -> (Real, Real) 
     k0_k1_of_square(square, bits)
 }
 
-/// Runs the recurrence and returns `F_0 = 0, F_1, ..., F_terms`.
+/// Runs the recurrence and shows `G_0, ..., G_(terms-1)` with their indices to `visit`.
 fn recurrence(
     integers: &Integers,
     g: Integer,
     k: Integer,
     terms: usize,
     effort: &Effort,
-) -> Result<Vec<Integer>, RouteFailure> {
+    mut visit: impl FnMut(&Integer, u64),
+) -> Result<(), RouteFailure> {
     let Integers { centre, half, denominator_squared, discriminant } = integers;
-    let mut list = Vec::with_capacity(terms + 1);
-    list.push(Integer::new());
     let (mut g, mut k) = (g, k);
     let (mut g_before, mut k_before) = (Integer::new(), Integer::new());
     let (mut m, mut l, mut product) = (Integer::new(), Integer::new(), Integer::new());
@@ -178,9 +212,7 @@ fn recurrence(
         if n % 64 == 0 {
             effort.check()?;
         }
-        let mut next = Integer::from(&g / (n + 1));
-        next = -next;
-        list.push(next);
+        visit(&g, n);
         if n + 1 == terms as u64 {
             break;
         }
@@ -203,7 +235,7 @@ fn recurrence(
         std::mem::swap(&mut g_before, &mut g);
         g.assign(-&m);
     }
-    Ok(list)
+    Ok(())
 }
 
 /// The constants of the rounding bound.
@@ -239,22 +271,28 @@ fn amplification(time: &Rational, s: &Rational, half: &Rational) -> Amplificatio
     Amplification { growth, balance, balance_below, sharpness }
 }
 
-/// Bound of the sum of all terms beyond `terms`.
-fn truncation(time: &Rational, s: &Rational, half: &Rational, terms: usize) -> Magnitude {
+/// Bound of the sum of all terms from number `first` on, for a function bounded by `bound` as in Lemma K1.
+fn truncation(
+    time: &Rational,
+    s: &Rational,
+    half: &Rational,
+    first: u64,
+    bound: impl Fn(&Rational, &Rational) -> Magnitude,
+) -> Magnitude {
     let (t, sf, w) = (time.to_f64(), s.to_f64(), half.to_f64());
     let cost = |ratio: f64| {
         let left = sf - ratio * w;
         let r = (left * (left + 2.0 * t)).sqrt();
-        -r - 0.5 * r.ln() - (t + left).ln() - (terms as f64 + 1.0) * ratio.ln() - (1.0 - 1.0 / ratio).ln()
+        -r - 0.5 * r.ln() - (t + left).ln() - first as f64 * ratio.ln() - (1.0 - 1.0 / ratio).ln()
     };
     let ratio = dyadic(best_ratio(sf / w, cost), 20);
     let left = s - Rational::from(half * &ratio);
-    let size = function_bound(time, &left);
+    let size = bound(time, &left);
     let ratio = Real::from_rational(&ratio, BOUND_BITS);
     let inverse = Real::from_i64(1).div(&ratio, BOUND_BITS);
     let below = Real::from_i64(1).sub(&inverse, BOUND_BITS);
     if !below.certainly_positive() {
         return Magnitude::INFINITY;
     }
-    size.mul(inverse.abs_upper().pow(terms as u64 + 1)).div(below.abs_lower())
+    size.mul(inverse.abs_upper().pow(first)).div(below.abs_lower())
 }

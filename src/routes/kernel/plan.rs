@@ -11,6 +11,8 @@ use std::f64::consts::{LN_2, LN_10, PI};
 
 /// More panels than this are refused.
 const MAX_PANELS: usize = 400;
+/// More series coefficients than this are refused.
+const MAX_TERMS: usize = 20_000_000;
 
 /// An ordinary panel, `s = v - t` from `from` to `to`.
 pub(super) struct PanelPlan {
@@ -58,26 +60,26 @@ pub(super) struct Plan {
 }
 
 /// The numbers that all choices rest on.
-struct Sizes {
-    t: f64,
-    a: f64,
+pub(in crate::routes) struct Sizes {
+    pub t: f64,
+    pub a: f64,
     /// Logarithm of the tolerance for the integral of `q^2`.
-    tolerance: f64,
+    pub tolerance: f64,
 }
 
 impl Sizes {
-    fn separation(&self, s: f64) -> f64 {
+    pub(in crate::routes) fn separation(&self, s: f64) -> f64 {
         s.sqrt() * (s + 2.0 * self.t).sqrt()
     }
 
     /// Logarithm of a bound of `F` at `v = t + s`.
-    fn log_function(&self, s: f64) -> f64 {
+    pub(in crate::routes) fn log_function(&self, s: f64) -> f64 {
         let r = self.separation(s);
         (1.3 / (r + 0.5) + (1.0 + 0.2 / r).ln()).ln() - r - (self.t + s).ln() + 0.3
     }
 
     /// Growth exponent of rounding errors over a panel, see `panel`.
-    fn growth(&self, centre: f64, half: f64) -> f64 {
+    pub(in crate::routes) fn growth(&self, centre: f64, half: f64) -> f64 {
         let d = centre * (centre + 2.0 * self.t);
         let balance = d.sqrt().max(1.0);
         let at = |x: f64| {
@@ -89,19 +91,19 @@ impl Sizes {
     }
 
     /// Terms after which the Taylor series about `centre` is below `exp(goal)`.
-    fn terms(&self, centre: f64, half: f64, goal: f64) -> usize {
+    pub(in crate::routes) fn terms(&self, centre: f64, half: f64, goal: f64) -> usize {
         let widest = centre / half;
         let cost = |ratio: f64| {
             let log = self.log_function(centre - ratio * half) - goal - (1.0 - 1.0 / ratio).ln() + 1.0;
             (log / ratio.ln()).max(1.0)
         };
         let best = best_ratio(widest, cost);
-        cost(best).ceil() as usize + 1
+        cost(best).ceil().min(1e9) as usize + 1
     }
 }
 
 /// A ratio in `(1, widest)` that makes `cost` small: a golden-section search in `ln((ratio - 1)/(widest - ratio))`.
-pub(super) fn best_ratio(widest: f64, cost: impl Fn(f64) -> f64) -> f64 {
+pub(in crate::routes) fn best_ratio(widest: f64, cost: impl Fn(f64) -> f64) -> f64 {
     const GOLDEN: f64 = 0.618_033_988_749_895;
     let place = |u: f64| (1.0 + widest * u.exp()) / (1.0 + u.exp());
     let (mut low, mut high) = (-9.0, 9.0);
@@ -134,15 +136,19 @@ impl Plan {
         let goal = f64::from(digits) * LN_10;
         let sigma = edge_width(a, t, goal);
         let mut plan = Plan { edge: None, panels: Vec::new(), bits: 64 };
-        let start = if d >= 0.5 * sigma { problem.distance.clone() } else { dyadic(sigma, 1) };
+        let with_edge = d < 0.5 * sigma;
+        let start = if with_edge { dyadic(sigma, 1) } else { problem.distance.clone() };
         plan.panels = panels(&sizes, &start, goal, proper_distance(t, d))?;
-        if d < 0.5 * sigma {
+        if with_edge {
             plan.edge = Some(edge(&sizes, &problem.distance, start, plan.panels.len()));
         }
         let edge_scale = plan.edge.as_ref().map_or(64, |e| e.scale);
         plan.bits = plan.panels.iter().map(|p| p.scale).fold(edge_scale, u32::max);
         // Sums are taken as balls; relative accuracy is what counts there.
         plan.bits = plan.bits.max((goal / LN_2) as u32 + 40);
+        if plan.terms() > MAX_TERMS {
+            return Err(refused("the kernel route would need too many terms"));
+        }
         Ok(plan)
     }
 
@@ -181,7 +187,8 @@ fn panels(sizes: &Sizes, start: &Rational, goal: f64, origin: f64) -> Result<Vec
     loop {
         let s = from.to_f64();
         let r = sizes.separation(s);
-        let squared = list.is_empty() || log_tail(sizes, s) > sizes.tolerance - 2.0;
+        // Squared panels must be the first ones without a gap: the tail bound begins where they end.
+        let squared = list.last().is_none_or(|before| before.squared && log_tail(sizes, s) > sizes.tolerance - 2.0);
         if !squared && sizes.log_function(s) < constant_goal {
             return Ok(list);
         }

@@ -45,6 +45,22 @@ pub(super) fn difference(near: Vec<Integer>, shifted: Vec<Integer>) -> Vec<Integ
 
 /// The integral for coefficients in units of `2^-scale`.
 pub(super) fn integral(coefficients: &[Integer], scale: u32) -> Real {
+    weighted(coefficients, scale, square)
+}
+
+/// The same for coefficients of either sign.
+pub(in crate::routes) fn signed_integral(coefficients: &[Integer], scale: u32) -> Real {
+    weighted(coefficients, scale, |list| {
+        if list.len() < PACK_FROM {
+            return (by_pairs(list), Magnitude::ZERO);
+        }
+        let list: Vec<Integer> = list.iter().map(|value| (*value).clone()).collect();
+        (signed_product(&list, &list), Magnitude::ZERO)
+    })
+}
+
+/// The two sums over the squares that `square` computes, with its bound of the sum of their errors.
+fn weighted(coefficients: &[Integer], scale: u32, square: impl Fn(&[&Integer]) -> (Vec<Integer>, Magnitude)) -> Real {
     let even: Vec<&Integer> = coefficients.iter().step_by(2).collect();
     let odd: Vec<&Integer> = coefficients.iter().skip(1).step_by(2).collect();
     // Fractions are cut to `guard` bits below the unit: one unit for each of them at most.
@@ -122,7 +138,7 @@ fn packed(list: &[&Integer]) -> (Vec<Integer>, Magnitude) {
 }
 
 /// Coefficients of the product of two polynomials with coefficients of either sign.
-pub(super) fn signed_product(first: &[Integer], second: &[Integer]) -> Vec<Integer> {
+pub(in crate::routes) fn signed_product(first: &[Integer], second: &[Integer]) -> Vec<Integer> {
     if first.is_empty() || second.is_empty() {
         return Vec::new();
     }

@@ -195,6 +195,11 @@ fn inverse_power(lambda: &Real, power: usize) -> Magnitude {
     Magnitude::ONE.div(lambda.abs_lower()).pow(power as u64)
 }
 
+/// Lower bound of a number that the estimates need to be positive: zero, so that they give nothing, if it may not be.
+fn positive_lower(value: &Real) -> Magnitude {
+    if value.certainly_positive() { value.abs_lower() } else { Magnitude::ZERO }
+}
+
 /// A list of balls as integers in units of `2^-scale`.
 struct FixedList {
     values: Vec<Integer>,
@@ -428,7 +433,9 @@ fn horner(coefficients: &[Integer], argument: &Integer, scale: u32) -> Integer {
     // u < 2^-(zeros/2): twice the binary logarithm, from the leading bits.
     let length = argument.significant_bits();
     let leading = Integer::from(argument >> length.saturating_sub(16)).to_u32().unwrap_or(u32::MAX);
-    let zeros = 2 * scale.saturating_sub(length) + u32::from(length > 16 && leading < 46_340);
+    // The argument one has more than `scale` bits, and no power of it may be left out.
+    let below_one = length <= scale && length > 16 && leading < 46_340;
+    let zeros = 2 * scale.saturating_sub(length) + u32::from(below_one);
     let needed = (2 * scale).checked_div(zeros).map_or(coefficients.len(), |terms| terms as usize + 1);
     for coefficient in coefficients.iter().take(needed).rev() {
         value += coefficient;
@@ -451,7 +458,7 @@ impl Geometry {
         let bits = BOUND_BITS;
         let one = Real::from_i64(1);
         let gap = self.outer.mul(&self.edge, bits);
-        let below = one.sub(&gap, bits).abs_lower();
+        let below = positive_lower(&one.sub(&gap, bits));
         let first = self.geometric[1].abs_upper();
         let ratio = gap.abs_upper();
         let terms = plan.cross_terms as u64;
@@ -459,9 +466,33 @@ impl Geometry {
         let series = series.mul(first).mul(first).shift(-2);
         let radius = self.outer_lambda.mul(&self.outer, bits);
         let growth = far.majorant(&radius);
-        let shrink = one.sub(&one.div(&self.outer_lambda, bits), bits).abs_lower();
+        let shrink = positive_lower(&one.sub(&one.div(&self.outer_lambda, bits), bits));
         let moments = growth.mul(inverse_power(&self.outer_lambda, self.outer_terms + 1)).mul(first).div(shrink);
         let spread = ratio.div(below).mul(Magnitude::from_u64(count)).shift(-1);
         series.add(moments.mul(spread))
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn horner_is_as_near_as_its_bound_says() {
+        const SCALE: u32 = 40;
+        // More coefficients than the powers of any argument below one could need.
+        let coefficients: Vec<Integer> = (0..200u32).map(|n| (Integer::from(1) << (SCALE - 8)) / (n + 3)).collect();
+        let size: Integer = coefficients.iter().sum();
+        for argument in [Integer::from(1) << SCALE, (Integer::from(1) << SCALE) - 1, Integer::from(46_341) << 24u32] {
+            let found = horner(&coefficients, &argument, SCALE);
+            let mut exact = rug::Rational::new();
+            let u = rug::Rational::from((argument, Integer::from(1) << SCALE));
+            for coefficient in coefficients.iter().rev() {
+                exact = (exact + coefficient) * &u;
+            }
+            // Two units for each step and what is left out, see `cross`.
+            let bound = 2 * coefficients.len() as u32 + Integer::from(&size >> SCALE) + 1u32;
+            assert!((exact - found).abs() <= bound);
+        }
     }
 }

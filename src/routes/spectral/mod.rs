@@ -67,6 +67,7 @@ pub(in crate::routes) mod massless;
 pub(in crate::routes) mod near_field;
 mod nodes;
 mod plan;
+pub mod time_derivatives;
 
 use super::{Effort, Route, RouteFailure, RouteOutcome, TailProblem};
 use crate::arithmetic::{Bits, Interval, Magnitude, Real, decimal};
@@ -89,7 +90,7 @@ impl Route for Spectral {
         "spectral"
     }
 
-    fn method(&self) -> &'static str {
+    fn method(&self, _problem: &TailProblem) -> &'static str {
         "trapezoid rule on the branch cut of the momentum integral, double sum over the rapidity nodes k h"
     }
 
@@ -177,7 +178,12 @@ impl Setting {
             None => (pi(bits).shift(-1), Real::zero()),
             Some(ref b) => {
                 let b = Real::from_rational(b, bits);
-                (b.clone(), crate::functions::elementary::cos(&b, bits))
+                let cosine = crate::functions::elementary::cos(&b, bits);
+                // The lemmas hold for `b <= pi/2`.
+                if !cosine.certainly_positive() || !b.certainly_less(&Real::from_i64(2)) {
+                    return Magnitude::INFINITY;
+                }
+                (b, cosine)
             }
         };
         let constant =

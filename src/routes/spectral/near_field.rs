@@ -14,10 +14,10 @@
 //! the `w` reversed for `k - l`.
 //!
 //! **Rounding.** Let all `w`, `r` be off by at most `e` units of `u = 2^-scale` and all `T` by at most
-//! two units, `|w|, |r| <= 1/4`, `T <= 1`. Integer products and sums are exact, so with `n` nodes the bracket, a sum
-//! of at most `4n + 1` products, is off by at most `(4n + 1)(e + 2)(1 + 2u) u`, and the whole by at most
-//! `n (4n + 1) (2e + 3) u` (as `|r| <= 1/4` and the bracket is at most `(4n+1)/4`). The packed product sums `2n^2`
-//! triple products, each off by at most `(2e + 2) u`, which is less.
+//! two units, `|w|, |r| <= 1/4`, `T <= 1`, and `e u <= 1/8` (checked). Integer products and sums are exact, so with `n`
+//! nodes the bracket, a sum of at most `4n + 1` products, is off by at most `(4n + 1)(e + 2)(1 + 2u) u`, and the whole
+//! by at most `n (4n + 1) [(1/4 + e u)(e + 2)(1 + 2u) + e/4] u <= n (4n + 1) (2e + 3) u` (as the bracket is at most
+//! `(4n+1)/4`). The packed product sums `2n^2` triple products, each off by at most `(2e + 2) u`, which is less.
 
 use crate::arithmetic::{Bits, Magnitude, Real};
 use crate::functions::elementary::ln_2;
@@ -74,6 +74,12 @@ pub(in crate::routes) fn sum(
     table: &Tangents,
     effort: &Effort,
 ) -> Result<Real, RouteFailure> {
+    let eighth = Magnitude::power_of_two(i64::from(plan.scale) - 3);
+    if nodes.error_units.cmp_value(eighth).is_gt() {
+        return Err(RouteFailure::OutOfReach {
+            reason: "the weights of the spectral sum are too inaccurate".to_owned(),
+        });
+    }
     let total = if plan.near.saturating_sub(plan.first) >= plan.product_from {
         by_product(nodes, plan, table, effort)?
     } else {
@@ -118,19 +124,27 @@ impl Tangents {
 
 /// `T_m` for `m` in `from..=to`: `(1 - q^m)/(1 + q^m)` with `q^m` by repeated fixed-point products.
 ///
-/// `q^m` is kept with 32 extra bits: its error after `n` steps is at most `n + 1` of the small units (each
-/// step adds at most one and shrinks what it has), so `T_m`, with derivative at most two in `q^m` and one
-/// rounding down, is off by less than two units of `2^-scale` for fewer than `2^30` steps.
+/// `q^m` is kept with 32 extra bits. The start and the factor `q` are off by at most two of the small units
+/// (checked), so each step shrinks the error it has and adds at most two for the factor and one for rounding down: at most
+/// `3n + 3` after `n` steps. `T_m`, with derivative at most two in `q^m` and one rounding down, is therefore off by
+/// less than two units of `2^-scale` for fewer than `2^29` steps.
 fn run(plan: &Lattice, from: usize, to: usize, effort: &Effort) -> Result<Vec<Integer>, RouteFailure> {
     let fine = plan.scale + 32;
     let one = Integer::from(1) << fine;
-    let bits = plan.bits + 64;
+    let bits = plan.bits.max(plan.scale) + 96;
     let step = plan.step_ball(bits);
     let start = crate::functions::elementary::exp(&step.mul_i64(-(from as i64), bits), bits);
     let decay = crate::functions::elementary::exp(&step.neg(), bits);
-    let broken = || RouteFailure::OutOfReach { reason: "the step of the spectral sum is not finite".to_owned() };
-    let (mut power, _) = start.to_fixed(i64::from(fine)).ok_or_else(broken)?;
-    let (factor, _) = decay.to_fixed(i64::from(fine)).ok_or_else(broken)?;
+    let two_units = |value: Real| {
+        let found =
+            value.to_fixed(i64::from(fine)).filter(|(_, error)| error.cmp_value(Magnitude::from_u64(2)).is_le());
+        let reason = || "the step of the spectral sum is not known well enough".to_owned();
+        found.map(|(value, _)| value).ok_or_else(|| RouteFailure::OutOfReach { reason: reason() })
+    };
+    let (mut power, factor) = (two_units(start)?, two_units(decay)?);
+    if to - from >= 1 << 29 {
+        return Err(RouteFailure::OutOfReach { reason: "the spectral sum would need too many nodes".to_owned() });
+    }
     let mut table = Vec::with_capacity(to - from + 1);
     for index in from..=to {
         if index % 64 == 0 {
