@@ -170,7 +170,7 @@ fn combined(standings: &[Standing]) -> Verdict {
 }
 
 fn reason(verdict: Verdict, statement: &Statement, standings: &[Standing], result: &TailResult) -> String {
-    let shown = DecimalBounds::new(&result.interval, result.digits.clamp(1, 6));
+    let shown = DecimalBounds::new(&result.interval, result.digits.max(1));
     let interval = format!("the quantity lies in [{}, {}]", shown.lower, shown.upper);
     let meanings: Vec<&str> = statement.readings.iter().map(|reading| reading.meaning.as_str()).collect();
     match verdict {

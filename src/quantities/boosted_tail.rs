@@ -174,6 +174,9 @@ impl Question for BoostedTail {
     }
 }
 
+/// The observer, with the name and text of the input that was read.
+pub type Observer = (Boost, (&'static str, String));
+
 /// The observer from texts: exactly one of rapidity and velocity.
 ///
 /// # Errors
@@ -181,7 +184,7 @@ impl Question for BoostedTail {
 pub fn observer(
     rapidity: Option<&ExactInput>,
     velocity: Option<&ExactInput>,
-) -> Result<Option<(Boost, (&'static str, String))>, Error> {
+) -> Result<Option<Observer>, Error> {
     match (rapidity, velocity) {
         (None, None) => Ok(None),
         (Some(theta), None) => Ok(Some((Boost::from_rapidity(theta)?, ("rapidity", theta.text().to_owned())))),
