@@ -3,6 +3,8 @@
 //! `references/density_from_definition.json` comes from `tests/oracles/points_from_definition.py`: momentum integrals
 //! on rotated paths, which share no formula with the program. `references/check-values.json` names its methods.
 
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
+
 use coneproof::arithmetic::{ExactInput, Interval};
 use coneproof::packets::BoxPacket;
 use coneproof::quantities::density::{DensityRequest, Known, PointValue};

@@ -3,6 +3,8 @@
 //! `references/propagator_from_definition.json` comes from `tests/oracles/points_from_definition.py`: momentum integrals
 //! on rotated paths, which share no formula with the program.
 
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
+
 use coneproof::arithmetic::{ExactInput, Interval};
 use coneproof::quantities::pointwise::Rectangle;
 use coneproof::quantities::propagator::{Dimension, PropagatorRequest};

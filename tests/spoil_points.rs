@@ -1,6 +1,8 @@
 //! Deliberate faults in the routes to propagators and densities are noticed by checks that pass without them.
 //!
 //! Run with `cargo test --features spoil --test spoil_points`. One fault at a time, in one test: the switch is global.
+
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
 #![cfg(feature = "spoil")]
 
 use coneproof::arithmetic::{ExactInput, Interval};

@@ -181,10 +181,7 @@ pub type Observer = (Boost, (&'static str, String));
 ///
 /// # Errors
 /// [`Error::BadInput`] if both are given or one cannot be used.
-pub fn observer(
-    rapidity: Option<&ExactInput>,
-    velocity: Option<&ExactInput>,
-) -> Result<Option<Observer>, Error> {
+pub fn observer(rapidity: Option<&ExactInput>, velocity: Option<&ExactInput>) -> Result<Option<Observer>, Error> {
     match (rapidity, velocity) {
         (None, None) => Ok(None),
         (Some(theta), None) => Ok(Some((Boost::from_rapidity(theta)?, ("rapidity", theta.text().to_owned())))),
