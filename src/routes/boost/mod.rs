@@ -36,6 +36,7 @@
 //! * [`Cut`]: momentum space, turned onto the branch cut; outside the cones, any time.
 //! * [`Contour`]: the amplitude as a lattice sum on lines off the cut, one for each edge event; outside at any
 //!   time, inside at `t = 0`.
+//!   The work inside grows with `m a sinh|theta|`: beyond about 30 it takes minutes or is declined.
 //! * [`Complement`]: one minus the probability of the interval between, by the contours of the inside; `t = 0`.
 
 mod contour;

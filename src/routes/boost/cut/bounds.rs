@@ -20,7 +20,8 @@
 //! <= S t`; on the strip `|f1|, |f2| <= 2 S cos^-4 b exp(E (1 - cos b)) t(Re w)`. *Proof.* On the strip `|cosh
 //! sigma|^2 = |1 + C^2| >= cos b (1 + |C|^2)` and `|C| >= q cosh u cos b`, so `|rho/cosh sigma| <= q^2 cosh^2
 //! u/(cos b (1 + q^2 cosh^2 u cos^2 b)) <= t/cos^3 b`. `|l| >= cos b cosh(Re sigma + theta/2) >= cos b cosh(Re
-//! sigma)/S >= cos b |cosh sigma|/S`, the same for `k`, and `|1 - exp(-2al)| <= 2`. On the real line all cosines and the factor two are one. ∎
+//! sigma)/S >= cos b |cosh sigma|/S`, the same for `k`, and `|1 - exp(-2al)| <= 2`. On the real line all cosines
+//! and the factor two are one. ∎
 //!
 //! **Lemma 4 (denominators).** For positions `K` on the strip and `K'` on the line, `|K + K'| >= (cosh u + cosh
 //! w') q cos^(3/2) b/(2S)`; if both are on the line, `K + K' >= (cosh w + cosh w') q/S`. *Proof.* Lemma A of
