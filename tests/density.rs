@@ -45,7 +45,7 @@ fn rounding_range(text: &str) -> (Rational, Rational) {
     let (mantissa, exponent) = text.split_once('e').unwrap();
     let unit = read(&format!("1e{exponent}"));
     let middle = Rational::from(mantissa.parse::<Integer>().unwrap()) * &unit;
-    (Rational::from(&middle - Rational::from(&unit / 2)), middle + unit / 2)
+    ((&middle - Rational::from(&unit / 2)), middle + unit / 2)
 }
 
 fn meets(interval: &Interval, (low, high): &(Rational, Rational)) -> bool {
@@ -83,7 +83,7 @@ fn values_computed_elsewhere() {
         let found = known(&a, &m, &t, &x, 36, false);
         let middle = read(value["value"].as_str().unwrap());
         let digits = value["digits_agreed_by_two_methods"].as_u64().unwrap();
-        let slack = Rational::from(&middle * read(&format!("1e-{}", digits - 1)));
+        let slack = (&middle * read(&format!("1e-{}", digits - 1)));
         let range = (Rational::from(&middle - &slack), Rational::from(&middle + &slack));
         assert!(meets(&found.density, &range), "{value}: {found:?}");
     }
@@ -166,7 +166,7 @@ proptest! {
         // Anywhere up to two and a half times the cone, or beside an edge's light cone.
         let mut x = Rational::from(&a + &t) * Rational::from_f64(place).unwrap();
         if let Some((power, outer, left)) = beside {
-            let gap = Rational::from(&t * Rational::from_f64(10f64.powf(power)).unwrap());
+            let gap = (&t * Rational::from_f64(10f64.powf(power)).unwrap());
             x = if outer { Rational::from(&a + &t) } else { Rational::from(&t - &a) };
             if left { x -= gap } else { x += gap }
         }
@@ -196,7 +196,7 @@ proptest! {
         let x = Rational::from_f64(x).unwrap();
         prop_assume!(Rational::from(&x - &t) > 1u32);
         let points: Vec<ExactInput> =
-            (0..PARTS).map(|k| exact(&Rational::from(&x + Rational::from((2 * k + 1 - PARTS, 4 * PARTS))))).collect();
+            (0..PARTS).map(|k| exact(&(&x + Rational::from((2 * k + 1 - PARTS, 4 * PARTS))))).collect();
         let request = PropagatorRequest::new(Dimension::One, exact(&one), exact(&t), points).unwrap();
         let mean: f64 = request.certify().unwrap().points.iter().map(|p| p.value.imaginary.lower().to_f64()).sum::<f64>()
             / PARTS as f64;

@@ -42,7 +42,7 @@ fn rounding_range(text: &str) -> (Rational, Rational) {
     let (mantissa, exponent) = text.split_once('e').unwrap();
     let unit = read(&format!("1e{exponent}"));
     let middle = Rational::from(mantissa.parse::<Integer>().unwrap()) * &unit;
-    (Rational::from(&middle - Rational::from(&unit / 2)), middle + unit / 2)
+    ((&middle - Rational::from(&unit / 2)), middle + unit / 2)
 }
 
 fn meets(interval: &Interval, (low, high): &(Rational, Rational)) -> bool {
@@ -159,7 +159,7 @@ proptest! {
         which in 0usize..3, mass in fraction(-3.0, 1.5), t in fraction(-2.0, 2.0), s in position(), unit in fraction(-3.0, 3.0)
     ) {
         let dimension = DIMENSIONS[which];
-        let x = Rational::from(&t * (Rational::from_f64(s).unwrap() + 1u32));
+        let x = (&t * (Rational::from_f64(s).unwrap() + 1u32));
         prop_assume!(x != t && Rational::from(&mass * &x) < 3000u32);
         let coarse = value(dimension, &mass, &t, &x, 10);
         let fine = value(dimension, &mass, &t, &x, 40);

@@ -174,17 +174,19 @@ mod tests {
         assert!(tiny.accuracy_estimate() > 90.0);
     }
 
+    fn refused<T>(result: Result<T, Error>, name: &str) -> bool {
+        matches!(result, Err(Error::BadInput { field, .. }) if field == name)
+    }
+
     #[test]
     fn bad_input_names_the_field() {
         let number = |text: &str| text.parse::<ExactInput>().unwrap();
-        let refused = |result: Result<Boost, Error>, field: &str| matches!(result, Err(Error::BadInput { field: f, .. }) if f == field);
         assert!(refused(Boost::from_velocity(&number("1")), "boost-velocity"));
         assert!(refused(Boost::from_velocity(&number("-3/2")), "boost-velocity"));
         assert!(refused(Boost::from_rapidity(&number("21")), "rapidity"));
         let still = || Boost::from_rapidity(&number("0")).unwrap();
         for (width, mass, field) in [("0", "1", "half-width"), ("1", "0", "mass"), ("1", "-1", "mass")] {
-            let result = BoostedBox::new(&number(width), &number(mass), still());
-            assert!(matches!(result, Err(Error::BadInput { field: f, .. }) if f == field));
+            assert!(refused(BoostedBox::new(&number(width), &number(mass), still()), field));
         }
     }
 }

@@ -9,15 +9,16 @@
 //!                 2 sin(a sinh(eta+theta))/sinh(eta+theta),           N = 1/(2 pi sqrt(2a)),
 //! ```
 //!
-//! from `phi(k) = sin(k a)/(k sqrt(pi a))`, `Lp = sinh(eta+theta)` and `dp = cosh(eta) deta`. Writing the sine as
-//! exponentials, each edge of the box is one event of the moving frame:
+//! from `phi(k) = sin(k a)/(k sqrt(pi a))`, `Lp = sinh(eta+theta)` and `dp = cosh(eta) deta`. Writing the sine
+//! as exponentials, each edge of the box is one event of the moving frame:
 //!
 //! ```text
 //! x sinh(eta) - t cosh(eta) ± a sinh(eta+theta) = (X± e^eta - X'± e^-eta)/2,
 //! X± = x - t ± a e^theta,      X'± = x + t ± a e^-theta.
 //! ```
 //!
-//! The event of an edge is where its `X` and `X'` vanish together; the lines `X = 0` and `X' = 0` are its light cone.
+//! The event of an edge is where its `X` and `X'` vanish together; the lines `X = 0` and `X' = 0` are its light
+//! cone.
 //!
 //! # Symmetries
 //!
@@ -26,15 +27,16 @@
 //!   substitute `eta -> -eta`).
 //!
 //! So the left side is the right side for `-theta`, and with the reversal each side can be written with a *lead*
-//! `l = a sinh(theta) + t >= 0` ([`side::Side`]). Then the outermost cone of the right side is `X- = 0`, that is
-//! `x = a e^theta + t`, and beyond it by `d`: `X- = d`, `X'- = d + 2 l`. At `t = 0` both sides have the same probability
-//! and the cone is `|x| = a e^|theta|`.
+//! `l = a sinh(theta) + t >= 0` (module `side`). Then the outermost cone of the right side is `X- = 0`, that is
+//! `x = a e^theta + t`, and beyond it by `d`: `X- = d`, `X'- = d + 2 l`. At `t = 0` both sides have the same
+//! probability and the cone is `|x| = a e^|theta|`.
 //!
 //! # Routes
 //!
 //! * [`Cut`]: momentum space, turned onto the branch cut; outside the cones, any time.
-//! * [`Contour`]: the amplitude as a lattice sum on lines off the cut, one for each edge event; outside at any time,
-//!   inside at `t = 0`.
+//! * [`Contour`]: the amplitude as a lattice sum on lines off the cut, one for each edge event; outside at any
+//!   time, inside at `t = 0`.
+//!   The work inside grows with `m a sinh|theta|`: beyond about 30 it takes minutes or is declined.
 //! * [`Complement`]: one minus the probability of the interval between, by the contours of the inside; `t = 0`.
 
 mod contour;

@@ -2,8 +2,8 @@
 //!
 //! **Zero or not.** For a velocity `v` the numbers `e^theta` and `sinh(theta)` are square roots of rationals, so
 //! `r + s e^theta = 0` is decided by comparing squares. For a rational rapidity other than zero both are
-//! transcendental (Lindemann's theorem), so with rational `r` and `s != 0` the sum is never zero, and more bits show
-//! its sign.
+//! transcendental (Lindemann's theorem), so with rational `r` and `s != 0` the sum is never zero, and more bits
+//! show its sign.
 
 use super::out_of_reach;
 use crate::arithmetic::{Bits, Real};

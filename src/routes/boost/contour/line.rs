@@ -1,23 +1,28 @@
 //! The lines in the `eta` plane: nodes on them and proven bounds.
 //!
-//! `S = e^(|theta|/2)`; `U + iV` is the point of the line or of the edge of its strip; all norms are over the piece.
+//! `S = e^(|theta|/2)`; `U + iV` is the point of the line or of the edge of its strip; all norms are over the
+//! piece.
 //!
-//! **Lemma 1.** `|w| <= S/max(|sin V|, |tanh(U + theta)|)`. *Proof.* `|cosh(U + iV)| <= cosh U`, and `|sinh(U + theta + iV)|^2 =
-//! cosh^2(U+theta) - cos^2 V` is at least `cosh^2(U+theta)` times `sin^2 V` and times `tanh^2(U+theta)`; `cosh U/cosh(U + theta) <= S^2`. ∎
+//! **Lemma 1.** `|w| <= S/max(|sin V|, |tanh(U + theta)|)`. *Proof.* `|cosh(U + iV)| <= cosh U`, and `|sinh(U +
+//! theta + iV)|^2 = cosh^2(U+theta) - cos^2 V` is at least `cosh^2(U+theta)` times `sin^2 V` and times
+//! `tanh^2(U+theta)`; `cosh U/cosh(U + theta) <= S^2`. ∎
 //!
-//! **Straight lines** `eta = u ± i alpha`, strip `|Im u| <= delta < alpha`, `alpha + delta <= 25/16 < pi/2`. With `s = sin(alpha -
-//! delta)`, on both edges of the strip an edge event's integrand is at most `(S/s) exp(-(s/2)(|X| e^U + |X'| e^-U))`, whose integral
-//! is `(S/s) 2 K_0(s sqrt(X X'))` (DLMF 10.32.9). Let `r >= 0` be the distance from the end of the piece nearer to the
-//! event, where `E = sqrt(X X')`: both factors grow with `r` at the rate one, so `sqrt(X X') >= E + r`. As `e^y K_0(y)`
-//! falls and `Int_0^inf K_0^2 = Int Int_0^inf ds dt/(cosh s + cosh t) = pi^2/4`, the `L2` norm is at most `(S/s) pi e^(-sE) s^(-1/2)`, and that of the rule's error
-//! at most twice that over `e^(2 pi delta/h) - 1` (Trefethen and Weideman, SIAM Review 56 (2014), theorem 5.1; the two edges count separately).
+//! **Straight lines** `eta = u ± i alpha`, strip `|Im u| <= delta < alpha`, `alpha + delta <= 25/16 < pi/2`.
+//! With `s = sin(alpha - delta)`, on both edges of the strip an edge event's integrand is at most `(S/s)
+//! exp(-(s/2)(|X| e^U + |X'| e^-U))`, whose integral is `(S/s) 2 K_0(s sqrt(X X'))` (DLMF 10.32.9). Let `r >= 0`
+//! be the distance from the end of the piece nearer to the event, where `E = sqrt(X X')`: both factors grow with
+//! `r` at the rate one, so `sqrt(X X') >= E + r`. As `e^y K_0(y)` falls and `Int_0^inf K_0^2 = Int Int_0^inf ds
+//! dt/(cosh s + cosh t) = pi^2/4`, the `L2` norm is at most `(S/s) pi e^(-sE) s^(-1/2)`, and that of the rule's
+//! error at most twice that over `e^(2 pi delta/h) - 1` (Trefethen and Weideman, SIAM Review 56 (2014), theorem
+//! 5.1; the two edges count separately).
 //!
 //! **Tilted lines** `eta = eta_c + u - i alpha tanh u` for `X < 0 < X'`: see [`super::tilted`].
 //!
-//! **Nodes left out.** Beyond the last node, at `U_K` on the right, with `y = e^U_K`, `s1` the least `|sin V|` there, `c` the bound of
-//! `|w d eta/du|` and `g = exp(X'max/(2y))` on tilted lines, `g = 1` on straight ones: the `L1` norms of the nodes add up
-//! to at most `T1 = c g (2/(s1 y)) exp(-s1 |X| y/2)`, the `L2` norms to `T2 = c g (2/sqrt(s1 y)) exp(-s1 |X| y/2)`, with the least `|X|` of the
-//! piece, from `Int_0^inf exp(-s1 r e^U/2) dr = 2/(s1 e^U)`, `h Sum_(k>K) e^-U_k <= e^-U_K` and `h Sum_(k>K) e^(-U_k/2) <= 2 e^(-U_K/2)`.
+//! **Nodes left out.** Beyond the last node, at `U_K` on the right, with `y = e^U_K`, `s1` the least `|sin V|`
+//! there, `c` the bound of `|w d eta/du|` and `g = exp(X'max/(2y))` on tilted lines, `g = 1` on straight ones:
+//! the `L1` norms of the nodes add up to at most `T1 = c g (2/(s1 y)) exp(-s1 |X| y/2)`, the `L2` norms to `T2 =
+//! c g (2/sqrt(s1 y)) exp(-s1 |X| y/2)`, with the least `|X|` of the piece, from `Int_0^inf exp(-s1 r e^U/2) dr
+//! = 2/(s1 e^U)`, `h Sum_(k>K) e^-U_k <= e^-U_K` and `h Sum_(k>K) e^(-U_k/2) <= 2 e^(-U_K/2)`.
 
 use super::piece::{End, Pair, Place};
 use super::sum::Node;

@@ -8,30 +8,32 @@
 //! E± = Int deta w(eta) exp((i/2) (X± e^eta - X'± e^-eta)),   w = sqrt(cosh(eta) cosh(eta+theta))/sinh(eta+theta),
 //! ```
 //!
-//! both passing the pole `eta = -theta` on the same side, here above it. Each edge's integral may be moved, within `|Im
-//! eta| < pi/2` where the square root is analytic, to a line on which it decays at both ends: the right end wants `Im
-//! eta` to have the sign of `X`, the left end that of `X'` ([`line`]):
+//! both passing the pole `eta = -theta` on the same side, here above it. Each edge's integral may be moved,
+//! within `|Im eta| < pi/2` where the square root is analytic, to a line on which it decays at both ends: the
+//! right end wants `Im eta` to have the sign of `X`, the left end that of `X'` ([`mod@line`]):
 //!
 //! * `X, X' > 0`: `eta = u + i alpha`. So is `E+` everywhere in `x >= 0` at `t = 0`, and both outside the cone.
-//! * `X < 0 < X'` (between the two lines of an edge's cone): `eta = eta_c + u - i alpha tanh u`, with the pole on the left.
-//! * `X, X' < 0`: `eta = u - i alpha`, below the pole; `E- = Int - 2 pi i Res`, where the residue is the plane wave
-//!   `sqrt(cosh theta) exp(-i x sinh(theta) - i t cosh(theta))`: the contracted box in motion.
+//! * `X < 0 < X'` (between the two lines of an edge's cone): `eta = eta_c + u - i alpha tanh u`, with the pole
+//!   on the left.
+//! * `X, X' < 0`: `eta = u - i alpha`, below the pole; `E- = Int - 2 pi i Res`, where the residue is the plane
+//!   wave `sqrt(cosh theta) exp(-i x sinh(theta) - i t cosh(theta))`: the contracted box in motion.
 //!
 //! # The probability of an interval
 //!
-//! On an interval `[x1, x2]` between the singular points of `x` the same lines serve for all `x`. The trapezoid rule gives
-//! `psi'/M = Sum_k v_k(x) + e(x)`, `v_k(x)` being proportional to `exp(i p_k x)`, so the square of the sum is integrated
-//! in closed form ([`sum`]),
+//! On an interval `[x1, x2]` between the singular points of `x` the same lines serve for all `x`. The trapezoid
+//! rule gives `psi'/M = Sum_k v_k(x) + e(x)`, `v_k(x)` being proportional to `exp(i p_k x)`, so the square of
+//! the sum is integrated in closed form ([`sum`]),
 //!
 //! ```text
 //! Q = Sum_kl [v_k conj(v_l)]_{x1}^{x2} / (i (p_k - conj p_l)),
 //! ```
 //!
-//! and with `|| e || <= eps` in `L2(x1, x2)` ([`line`]) the norm of `psi'/M` differs from `sqrt Q` by at most `eps`: no
-//! logarithm at an edge of the interval, where the amplitude is infinite, is ever evaluated.
+//! and with `|| e || <= eps` in `L2(x1, x2)` ([`mod@line`]) the norm of `psi'/M` differs from `sqrt Q` by at most
+//! `eps`: no logarithm at an edge of the interval, where the amplitude is infinite, is ever evaluated.
 //!
-//! **Nodes left out.** With `T1`, `T2` bounds of the `L1` and `L2` norms of the nodes left out and `V = Sum_k sup |v_k|` over the nodes kept
-//! (each `|v_k|` is an exponential of `x`, so the supremum is at an end), `Q` changes by at most `2 V T1 + T2^2`.
+//! **Nodes left out.** With `T1`, `T2` bounds of the `L1` and `L2` norms of the nodes left out and `V = Sum_k
+//! sup |v_k|` over the nodes kept (each `|v_k|` is an exponential of `x`, so the supremum is at an end), `Q`
+//! changes by at most `2 V T1 + T2^2`.
 
 mod line;
 mod piece;
@@ -170,15 +172,10 @@ fn evaluate_piece(piece: &Piece, side: &Side, digits: u32, effort: &Effort) -> R
     let sum = sum::hermitian(&nodes, bits, effort)?;
     let kept = nodes.iter().fold(Magnitude::ZERO, |sum, node| sum.add(node.largest()));
     let cut_error = kept.mul(cut.first).shift(1).add(cut.second.mul(cut.second));
-    let error = if crate::spoil::is_active(crate::spoil::Fault::TrapezoidErrorForgotten) {
-        Magnitude::ZERO
-    } else {
-        discretisation
-    };
     let square = sum.clone().widen(cut_error).to_interval(bits).clamp_non_negative().to_real(bits);
     let root = Real::new(square.upper(bits), Magnitude::ZERO);
-    let twice = sqrt(&root, bits).abs_upper().mul(error).shift(1);
-    let whole = square.widen(twice.add(error.mul(error)));
+    let twice = sqrt(&root, bits).abs_upper().mul(discretisation).shift(1);
+    let whole = square.widen(twice.add(discretisation.mul(discretisation)));
     let scale = pi(bits).square(bits).mul(&place.half_width, bits).shift(3);
     let interval = whole.div(&scale, bits).to_interval(bits).clamp_non_negative();
     let witness = witness(&plan, discretisation, cut_error, &sum.to_interval(bits));
@@ -192,4 +189,72 @@ fn witness(plan: &Plan, discretisation: Magnitude, cut: Magnitude, sum: &Interva
     list.push(("double sum, lower".to_owned(), decimal::lower_decimal(sum.lower(), 20)));
     list.push(("double sum, upper".to_owned(), decimal::upper_decimal(sum.upper(), 20)));
     list
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::packets::Boost;
+    use crate::routes::boost::Region;
+    use rug::Rational;
+
+    /// The double sum, the discretisation bound and the cut-off bound of a plan.
+    fn find(place: &Place, plan: &Plan) -> (Real, Magnitude, Magnitude) {
+        let mut nodes = Vec::new();
+        let (mut norm, mut cut) = (Magnitude::ZERO, line::Tails::ZERO);
+        for line in &plan.lines {
+            norm = norm.add(line.discretisation(place));
+            cut = cut.add(line.tails(place));
+            line.nodes(place, plan.bits, &Effort::default(), &mut nodes).unwrap();
+        }
+        nodes.extend(place.plane_wave(plan.bits));
+        let sum = sum::hermitian(&nodes, plan.bits, &Effort::default()).unwrap();
+        let kept = nodes.iter().fold(Magnitude::ZERO, |sum, node| sum.add(node.largest()));
+        let cut_error = kept.mul(cut.first).shift(1).add(cut.second.mul(cut.second));
+        let root = sqrt(&Real::from_float(sum.upper(64)), 64).abs_upper();
+        (sum, root.mul(norm).shift(1).add(norm.mul(norm)), cut_error)
+    }
+
+    /// Every zone with a spoilt plan: the spoilt bound holds and is noticed when forgotten.
+    fn noticed(excess: f64, discretisation: bool, spoil: impl Fn(&mut line::Line)) {
+        for (half_width, theta, at) in [(1000, 500, 300), (400, 1000, 100), (2000, 300, 1500)] {
+            let number = |n: i64| Rational::from((n, 1000));
+            let side = Side::new(&number(half_width), &Boost::Rapidity(number(theta)), &Rational::new()).unwrap();
+            for piece in piece::outside(&side, &Region::Beyond(number(at))).unwrap() {
+                let place = Place::new(&piece, &side, 160).unwrap();
+                let fine = Plan::new(&place, 16).unwrap();
+                let (truth, first, second) = find(&place, &fine);
+                let truth = truth.widen(first.add(second));
+                // Each line in turn.
+                for index in 0..fine.lines.len() {
+                    let mut plan = Plan::new(&place, 13).unwrap();
+                    spoil(&mut plan.lines[index]);
+                    let (sum, norm, cut) = find(&place, &plan);
+                    let (bound, rest) = if discretisation { (norm, cut) } else { (cut, norm) };
+                    let name = format!("{} line {index} of {half_width} {theta}", piece.name());
+                    assert!(sum.clone().widen(bound.add(rest)).overlaps(&truth), "{name}: the bound does not hold");
+                    assert!(!sum.clone().widen(rest).overlaps(&truth), "{name}: the bound could be forgotten");
+                    let error = truth.sub(&sum, 300).abs_lower().log2_estimate();
+                    let ratio = (bound.log2_estimate() - error).exp2();
+                    println!("{name}: {ratio:.1e} times the error");
+                    assert!(ratio < excess, "{name}: {ratio} times the error");
+                }
+            }
+        }
+    }
+
+    #[test]
+    fn discretisation_bound() {
+        noticed(1e6, true, |line| {
+            line.step *= 5;
+            line.first = line.first.div_euclid(5);
+            line.last = line.last / 5 + 1;
+        });
+    }
+
+    #[test]
+    fn cut_off_bound() {
+        noticed(1e6, false, |line| line.last = line.last * 2 / 5);
+        noticed(1e6, false, |line| line.first = line.first * 2 / 5);
+    }
 }

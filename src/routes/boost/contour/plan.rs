@@ -1,4 +1,5 @@
-//! Lines, steps, cut-offs and precision. The constants come from the bounds themselves; doubles choose among them.
+//! Lines, steps, cut-offs and precision. The constants come from the bounds themselves; doubles choose among
+//! them.
 
 use super::line::{Edge, Line, Shape, Way};
 use super::piece::{Place, Zone};

@@ -1,14 +1,17 @@
 //! The square of a sum of waves, integrated over an interval.
 //!
-//! For nodes `v_k(x) = v_k exp(i p_k x)` the result is `Sum_kl [v_k conj v_l]/(i (p_k - conj p_l))` between the two ends. The diagonal gives
-//! `-[|v|^2]/(2 Im p)`, or `|v|^2` times the length for a real `p`; two conjugate terms give twice the real part of one.
+//! For nodes `v_k(x) = v_k exp(i p_k x)` the result is `Sum_kl [v_k conj v_l]/(i (p_k - conj p_l))` between the
+//! two ends. The diagonal gives `-[|v|^2]/(2 Im p)`, or `|v|^2` times the length for a real `p`; two conjugate
+//! terms give twice the real part of one.
 //!
-//! **Rounding.** The pairs are summed from midpoints with plain rounding to `p` bits (`u = 2^-p`). With `g = 1/(i (p_k - conj p_l))` as
-//! computed, `|g|_1` the sum of the absolute values of its parts, `V` upper bounds of `|v|` over the balls, `r_v`, `r_p` radii (of either
-//! part, so that discs have at most twice that): a term `v_k conj(v_l) g` is computed with some ten operations on parts, each with a relative
-//! error `u` of a quantity bounded by the product of the norms, and at most `2n` additions follow; so for `n < 2^20` rounding adds at most
-//! `(4n + 64) u V_k V_l |g|_1` for each pair and end, the momenta `4 V_k V_l |g|_1^2 (r_pk + r_pl)` provided `|g|_1 (r_pk + r_pl) <= 1/8`, and the
-//! amplitudes `2 (V_k r_vl + V_l r_vk) |g|_1`; all twice for the conjugate pair.
+//! **Rounding.** The pairs are summed from midpoints with plain rounding to `p` bits (`u = 2^-p`). With `g =
+//! 1/(i (p_k - conj p_l))` as computed, `|g|_1` the sum of the absolute values of its parts, `V` upper bounds of
+//! `|v|` over the balls, `r_v`, `r_p` radii (of either part, so that discs have at most twice that): a term `v_k
+//! conj(v_l) g` is computed with some ten operations on parts, each with a relative error `u` of a quantity
+//! bounded by the product of the norms, and at most `2n` additions follow; so for `n < 2^20` rounding adds at
+//! most `(4n + 64) u V_k V_l |g|_1` for each pair and end, the momenta `4 V_k V_l |g|_1^2 (r_pk + r_pl)`
+//! provided `|g|_1 (r_pk + r_pl) <= 1/8`, and the amplitudes `2 (V_k r_vl + V_l r_vk) |g|_1`; all twice for the
+//! conjugate pair.
 
 use crate::arithmetic::{Bits, Complex, Magnitude, Real};
 use crate::routes::{Effort, RouteFailure};

@@ -1,14 +1,18 @@
 //! Bounds on tilted lines, between the two lines of an edge's light cone.
 //!
-//! **Tilted lines** `eta = eta_c + u - i alpha tanh u` for `X = -Y < 0 < X'`, strip `|Im u| <= delta < alpha`, `alpha + delta < pi/2`, `delta <=
-//! pi/4`. For `u = n ± i delta`: `tanh u = r + i j` with `tanh n <= r <= tanh 2n` for `n >= 0`, odd and increasing in `n`, and `|j| <= tan
-//! delta` with the sign of `Im u`. So `U = eta_c + n + alpha j`, `V = Im u - alpha r`, and `Re` of the exponent is `(sin V/2)(Y e^U - X'
-//! e^-U)`. With a border `n1` let `v1 = alpha tanh n1 - delta > 0`: beyond it `V <= -v1` on the right, `V >= v1` on the left, `|V| <= alpha + delta`.
+//! **Tilted lines** `eta = eta_c + u - i alpha tanh u` for `X = -Y < 0 < X'`, strip `|Im u| <= delta < alpha`,
+//! `alpha + delta < pi/2`, `delta <= pi/4`. For `u = n ± i delta`: `tanh u = r + i j` with `tanh n <= r <= tanh
+//! 2n` for `n >= 0`, odd and increasing in `n`, and `|j| <= tan delta` with the sign of `Im u`. So `U = eta_c +
+//! n + alpha j`, `V = Im u - alpha r`, and `Re` of the exponent is `(sin V/2)(Y e^U - X' e^-U)`. With a border
+//! `n1` let `v1 = alpha tanh n1 - delta > 0`: beyond it `V <= -v1` on the right, `V >= v1` on the left, `|V| <=
+//! alpha + delta`.
 //!
-//! * Pole: with `m = eta_c + theta - alpha tan delta - n1 > 0`, wherever `U + theta < m` one has `n < -n1`, so `V >= v1`. So the strip
-//!   passes above the pole and `|w| <= S/m0`, `m0 = min(sin v1, tanh m)`; `|d eta/du| <= 1 + alpha/cos^2 delta`.
-//! * Right of `n1`: at most `exp(X' e^-U1/2) E_1(s1 Y e^U1/2)`, `U1 = eta_c + n1 - alpha tan delta`, `s1 = sin v1`, in `L2` at most
-//!   `exp(X'max e^-U1/2) sqrt(4 ln 2/(s1 e^U1))` as `Int_0^inf E_1^2 = 2 ln 2`. Left of `-n1` the same with `Y`, `X'` and `U -> -U` exchanged.
+//! * Pole: with `m = eta_c + theta - alpha tan delta - n1 > 0`, wherever `U + theta < m` one has `n < -n1`, so
+//!   `V >= v1`. So the strip passes above the pole and `|w| <= S/m0`, `m0 = min(sin v1, tanh m)`; `|d eta/du| <=
+//!   1 + alpha/cos^2 delta`.
+//! * Right of `n1`: at most `exp(X' e^-U1/2) E_1(s1 Y e^U1/2)`, `U1 = eta_c + n1 - alpha tan delta`, `s1 = sin
+//!   v1`, in `L2` at most `exp(X'max e^-U1/2) sqrt(4 ln 2/(s1 e^U1))` as `Int_0^inf E_1^2 = 2 ln 2`. Left of
+//!   `-n1` the same with `Y`, `X'` and `U -> -U` exchanged.
 //! * Between: the exponent is bounded on cells of `n`, and the sum over the cells counts `sqrt(x2 - x1)` times.
 
 use super::line::{BITS, Edge, Line, largest, least, one, real};

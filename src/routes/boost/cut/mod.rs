@@ -2,19 +2,20 @@
 //!
 //! # From the definition to the cut
 //!
-//! Beyond the cone of its side (see [`super`]) `X±` and `X'±` are positive, so `|exp(i (X e^eta - X' e^-eta)/2)| <= 1`
-//! for `0 <= Im eta <= pi` and the line of integration can be raised to `eta = s + i pi/2`, where `p = i cosh(s)`: both
-//! lips of the cut `p = i kappa`, `kappa >= 1`, are met, one for `s > 0`, one for `s < 0`. There
+//! Beyond the cone of its side (see [`super`]) `X±` and `X'±` are positive, so `|exp(i (X e^eta - X' e^-eta)/2)|
+//! <= 1` for `0 <= Im eta <= pi` and the line of integration can be raised to `eta = s + i pi/2`, where `p = i
+//! cosh(s)`: both lips of the cut `p = i kappa`, `kappa >= 1`, are met, one for `s > 0`, one for `s < 0`. There
 //!
 //! ```text
 //! cosh(eta) cosh(eta+theta) = -sinh(s) sinh(s+theta),     sin(a sinh(eta+theta))/sinh(eta+theta) = sinh(a l)/l,
 //! ```
 //!
-//! with `l = cosh(s+theta)`. The square root is continued from the real axis: at `Re eta = -theta/2` its square is
-//! `(cosh 2 Im eta + cosh theta)/2` with `cos` for `cosh` of an imaginary number, positive all the way up, so between
-//! the two square-root points `s = 0` and `s = -theta` the root is positive; to the right of both, `cosh(eta)` and
-//! `cosh(eta+theta)` come from the first quadrant, so it is `+i` times a positive number, to the left `-i` times one.
-//! The point `s = -theta` is the zero of `omega(Lp)`, at `kappa = cosh(theta)`. Let `sigma = s + theta/2` and
+//! with `l = cosh(s+theta)`. The square root is continued from the real axis: at `Re eta = -theta/2` its square
+//! is `(cosh 2 Im eta + cosh theta)/2` with `cos` for `cosh` of an imaginary number, positive all the way up, so
+//! between the two square-root points `s = 0` and `s = -theta` the root is positive; to the right of both,
+//! `cosh(eta)` and `cosh(eta+theta)` come from the first quadrant, so it is `+i` times a positive number, to the
+//! left `-i` times one. The point `s = -theta` is the zero of `omega(Lp)`, at `kappa = cosh(theta)`. Let `sigma
+//! = s + theta/2` and
 //!
 //! ```text
 //! q = sinh(|theta|/2),  c = cosh(theta/2),    -sinh(s) sinh(s+theta) = q^2 - sinh^2(sigma).
@@ -30,16 +31,17 @@
 //!
 //! # Substitutions that remove the square-root points
 //!
-//! * `A`: `sinh sigma = q cosh w`, `w >= 0`: `sqrt(...) dsigma = rho dw`, `rho = q^2 sinh^2 w / cosh sigma`, even
-//!   in `w` and analytic for `|Im w| < pi/2`, for every `q > 0`.
-//! * `B`: `tanh sigma = T tanh z`, `T = q/c`: `sqrt(...) dsigma = rho_B dz`, `rho_B = q^2 c^2/(c^2 + sinh^2 z)^(3/2)`,
-//!   analytic for `|Im z| < pi/2`.
+//! * `A`: `sinh sigma = q cosh w`, `w >= 0`: `sqrt(...) dsigma = rho dw`, `rho = q^2 sinh^2 w / cosh sigma`,
+//!   even in `w` and analytic for `|Im w| < pi/2`, for every `q > 0`.
+//! * `B`: `tanh sigma = T tanh z`, `T = q/c`: `sqrt(...) dsigma = rho_B dz`, `rho_B = q^2 c^2/(c^2 + sinh^2
+//!   z)^(3/2)`, analytic for `|Im z| < pi/2`.
 //!
 //! # The probability
 //!
-//! With `k = cosh(sigma - theta/2)`, `l = cosh(sigma + theta/2)`, the lead `L = a sinh(theta) + t`, the distance `d` of the
-//! region from the cone and `E = sqrt(d (d + 2L))`, collecting the exponents at `x = a e^theta + t + d` gives
-//! `g(sigma) = exp(-E) exp(-Y1) (1 - exp(-2al))/l` and `g(-sigma) = exp(-E) exp(-Y2) (1 - exp(-2ak))/k` with
+//! With `k = cosh(sigma - theta/2)`, `l = cosh(sigma + theta/2)`, the lead `L = a sinh(theta) + t`, the distance
+//! `d` of the region from the cone and `E = sqrt(d (d + 2L))`, collecting the exponents at `x = a e^theta + t +
+//! d` gives `g(sigma) = exp(-E) exp(-Y1) (1 - exp(-2al))/l` and `g(-sigma) = exp(-E) exp(-Y2) (1 - exp(-2ak))/k`
+//! with
 //!
 //! ```text
 //! Y1 = (r1 e^(s/2) - r2 e^(-s/2))^2,    s = sigma - theta/2,    r1 = sqrt(d/2),    r2 = sqrt(d/2 + L),
@@ -52,9 +54,10 @@
 //! P = (I_A + I_B)/(8 pi^2 a) exp(-2E),     I = Int Int dmu(K) dmu(K')/(K + K'),
 //! ```
 //!
-//! where `mu` of `A` has the density `f1 = rho exp(-Y1)(1 - exp(-2al))/l` at `K = k` and `-f2`, `f2 = rho exp(-Y2)(1 -
-//! exp(-2ak))/k`, at `K = l`, and `mu` of `B` has `rho_B exp(-Y1) (1 - exp(-2al))/l` at `K = k`. The cross terms of `A` and
-//! `B` are imaginary in `|B + iA|^2` and drop out. The trapezoid rule in `w` and `z` is used; bounds in [`bounds`].
+//! where `mu` of `A` has the density `f1 = rho exp(-Y1)(1 - exp(-2al))/l` at `K = k` and `-f2`, `f2 = rho
+//! exp(-Y2)(1 - exp(-2ak))/k`, at `K = l`, and `mu` of `B` has `rho_B exp(-Y1) (1 - exp(-2al))/l` at `K = k`.
+//! The cross terms of `A` and `B` are imaginary in `|B + iA|^2` and drop out. The trapezoid rule in `w` and `z`
+//! is used; bounds in [`bounds`].
 
 mod bounds;
 mod nodes;
@@ -250,4 +253,82 @@ fn witness(plan: &Plan, errors: &[(&'static str, Magnitude)], integral: &Real) -
     list.push(("integrals without exp(-2E), lower".to_owned(), decimal::lower_decimal(interval.lower(), 20)));
     list.push(("integrals without exp(-2E), upper".to_owned(), decimal::upper_decimal(interval.upper(), 20)));
     list
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::packets::Boost;
+
+    /// Half-width, rapidity, time, distance.
+    const CASES: [(i64, i64, i64, i64); 5] =
+        [(1000, 500, 0, 0), (100, 1000, 0, 0), (3000, 1500, 0, 400), (1000, -500, 1500, 0), (2000, -700, 4000, 900)];
+
+    /// The lattice sum, its bounds and the true integrals of a case with a spoilt plan.
+    type Found = (Real, Vec<(&'static str, Magnitude)>, Real);
+
+    fn find(case: (i64, i64, i64, i64), spoil: impl Fn(&mut Plan, &Setting)) -> Found {
+        let number = |n: i64| Rational::from((n, 1000));
+        let side = Side::new(&number(case.0), &Boost::Rapidity(number(case.1)), &number(case.2)).unwrap();
+        let region = Region::BeyondCone(number(case.3));
+        let rough = Setting::new(&side, &region, 64).unwrap();
+        let effort = Effort::default();
+        let fine = Plan::new(&rough, 36).unwrap();
+        let setting = Setting::new(&side, &region, fine.bits).unwrap();
+        let all = |list: &[(&str, Magnitude)]| list.iter().fold(Magnitude::ZERO, |sum, (_, error)| sum.add(*error));
+        let truth = lattice_sum(&setting, &fine, &effort).unwrap().0.widen(all(&bounds::errors(&setting, &fine)));
+        let mut plan = Plan::new(&rough, 30).unwrap();
+        spoil(&mut plan, &rough);
+        let sum = lattice_sum(&setting, &plan, &effort).unwrap().0;
+        (sum, bounds::errors(&setting, &plan), truth)
+    }
+
+    /// Some bounds made large: they hold, forgetting them is noticed, and they are at most `excess` times the error.
+    fn bounds_alone(spoilt: &[usize], excess: f64, spoil: impl Fn(&mut Plan, &Setting)) {
+        for case in CASES {
+            let (sum, errors, truth) = find(case, &spoil);
+            let total = |kept: &dyn Fn(usize) -> bool| {
+                let list = errors.iter().enumerate().filter(|(place, _)| kept(*place));
+                list.fold(Magnitude::ZERO, |sum, (_, (_, error))| sum.add(*error))
+            };
+            let name = errors[spoilt[0]].0;
+            assert!(sum.clone().widen(total(&|_| true)).overlaps(&truth), "{name} does not hold for {case:?}");
+            let noticed = !sum.clone().widen(total(&|place| !spoilt.contains(&place))).overlaps(&truth);
+            let error = truth.sub(&sum, 200).abs_lower().log2_estimate();
+            let ratio = (total(&|place| spoilt.contains(&place)).log2_estimate() - error).exp2();
+            println!("{name} {case:?}: {ratio:.1} times the error");
+            assert!(noticed, "{name} could be forgotten for {case:?}");
+            assert!(ratio < excess, "{name} is {ratio} times the error for {case:?}");
+        }
+    }
+
+    /// The same ends with the step and the strip of a few digits.
+    fn coarser(plan: &mut Plan, rough: &Setting) {
+        let coarse = Plan::new(rough, 5).unwrap();
+        let factor = Rational::from(&coarse.step / &plan.step).to_f64();
+        let scaled = |index: i64| index as f64 / factor;
+        plan.outer_first = (scaled(plan.outer_first).floor() as i64).max(1);
+        plan.outer_last = scaled(plan.outer_last).ceil() as i64;
+        plan.inner_first = scaled(plan.inner_first).floor() as i64;
+        plan.inner_last = scaled(plan.inner_last).ceil() as i64;
+        (plan.step, plan.strip) = (coarse.step, coarse.strip);
+    }
+
+    #[test]
+    fn discretisation_bound() {
+        bounds_alone(&[0, 1], 1e11, coarser);
+    }
+
+    #[test]
+    fn outer_cut_bound() {
+        bounds_alone(&[2], 1e4, |plan, _| plan.outer_last = plan.outer_last / 4 + plan.outer_first);
+    }
+
+    #[test]
+    fn inner_cut_bound() {
+        bounds_alone(&[3], 1e8, |plan, _| {
+            plan.inner_last /= 3;
+            plan.inner_first /= 3;
+        });
+    }
 }

@@ -1,4 +1,5 @@
-//! Steps, strips, cut-offs and precision, chosen in double precision: a bad choice costs width, never containment.
+//! Steps, strips, cut-offs and precision, chosen in double precision: a bad choice costs width, never
+//! containment.
 
 use super::Setting;
 use crate::arithmetic::Bits;
@@ -135,7 +136,7 @@ impl Rough {
         (first.max(0.0) + second, first_whole + second_whole)
     }
 
-    /// Position `cosh(sigma + shift)` and weight with the factor `(1 - e^(-2a cosh(sigma - shift)))/cosh(sigma - shift)`.
+    /// Position `cosh(sigma + shift)`, and the weight with `l = cosh(sigma - shift)` in `(1 - e^(-2al))/l`.
     fn node(&self, sigma: f64, shift: f64, density: f64, gap: f64) -> (f64, f64) {
         let other = (sigma - shift).cosh();
         ((sigma + shift).cosh(), density * (-gap * gap).exp() * -(-2.0 * self.a * other).exp_m1() / other)

@@ -1,16 +1,16 @@
 //! The double sum `Sum_ij W_i W_j/(K_i + K_j)` of a point measure.
 //!
 //! It is formed from the midpoints with plain rounding to `p` bits; the error is bounded once for all. By the
-//! inequality of arithmetic and geometric means `1/(K + K') <= 1/(2 sqrt(K K'))`, so with
-//! `B = Sum |W_i|/sqrt(K_i)` (upper bounds over the balls) the sum of the absolute values is at most `B^2/2`.
+//! inequality of arithmetic and geometric means `1/(K + K') <= 1/(2 sqrt(K K'))`, so with `B = Sum
+//! |W_i|/sqrt(K_i)` (upper bounds over the balls) the sum of the absolute values is at most `B^2/2`.
 //!
-//! * Rounding: each term passes one addition (of positive numbers), one reciprocal, two products and at most `2n`
-//!   additions of partial sums, each partial sum being bounded by the sum of absolute values: together at most
-//!   `2 (2n + 8) 2^-p B^2/2` for `n < 2^20`, `p >= 32`, the factor two covering the higher orders. Numbers below
-//!   MPFR's range (`2^-(2^62)`) are flushed to zero, which `2^-(2^40)` covers.
+//! * Rounding: each term passes one addition (of positive numbers), one reciprocal, two products and at most
+//!   `2n` additions of partial sums, each partial sum being bounded by the sum of absolute values: together at
+//!   most `2 (2n + 8) 2^-p B^2/2` for `n < 2^20`, `p >= 32`, the factor two covering the higher orders. Numbers
+//!   below MPFR's range (`2^-(2^62)`) are flushed to zero, which `2^-(2^40)` covers.
 //! * Weights with radii `r_i`, or dropped as `|W_i| <= r_i`: at most `B R + R^2/2` with `R = Sum r_i/sqrt(K_i)`.
-//! * Positions with relative radii at most `e <= 1/4`: each quotient changes by at most the factor `1/(1 - e) - 1 <= 2e`,
-//!   so at most `e B^2`.
+//! * Positions with relative radii at most `e <= 1/4`: each quotient changes by at most the factor `1/(1 - e) -
+//!   1 <= 2e`, so at most `e B^2`.
 
 use super::nodes::Node;
 use crate::arithmetic::{Bits, Magnitude, Real, rounding};
