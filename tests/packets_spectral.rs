@@ -8,8 +8,9 @@
 
 use coneproof::arithmetic::{ExactInput, Interval, Real};
 use coneproof::packets::waves::Polynomial;
-use coneproof::packets::{BSplinePacket, ExactComplex, WavePacket};
+use coneproof::packets::{BSplinePacket, ExactComplex, PiecewisePacket, WavePacket};
 use coneproof::routes::cut::{CutAmplitude, CutSide, CutTail};
+use coneproof::routes::panels::{PiecewiseKernel, Sides};
 use coneproof::routes::spectral::SPECTRAL;
 use coneproof::routes::{Effort, Evaluation, Route, TailProblem};
 use proptest::prelude::*;
@@ -413,6 +414,46 @@ fn superpositions_are_contained() {
         WavePacket::superposition(&list.into_iter().map(placed).collect::<Vec<_>>()).ok()
     });
     contained(CASES, packets);
+}
+
+/// Position space and momentum space share the arithmetic and nothing else.
+#[test]
+fn kernel_and_spectral_routes_meet() {
+    let config = ProptestConfig {
+        cases: 200,
+        rng_seed: RngSeed::Fixed(33),
+        failure_persistence: None,
+        ..ProptestConfig::default()
+    };
+    let distance = prop_oneof![1 => Just(Rational::new()), 1 => size(-2.0, 0.7)];
+    let inputs = (0u32..4, size(-1.5, 0.7), 1u32..5, momentum(), size(-1.0, 0.5), size(-1.5, 1.5), distance);
+    let result = TestRunner::new(config).run(&inputs, |(kind, a, n, k, m, t, d)| {
+        let (piecewise, waves) = match kind {
+            0 => (PiecewisePacket::cosine(&a, n), WavePacket::cosine(&a, n, &Rational::new())),
+            1 => (PiecewisePacket::uniform_ball(&a), WavePacket::ball(&a)),
+            2 => (
+                PiecewisePacket::bspline(&a, n).and_then(|packet| packet.with_momentum(&k)),
+                WavePacket::bspline(&a, n, &k),
+            ),
+            _ => {
+                let knots = vec![Rational::new(), a.clone(), Rational::from(&a * 2)];
+                let pieces = vec![vec![q(1, 1), k.clone()], vec![k, q(-1, 3), q(2, 1)]];
+                let exact = |piece: &Vec<Rational>| piece.iter().cloned().map(ExactComplex::from).collect();
+                let list: Vec<Polynomial> = pieces.iter().map(exact).collect();
+                (PiecewisePacket::real(knots.clone(), pieces), WavePacket::piecewise(knots, &list))
+            }
+        };
+        let kernel = PiecewiseKernel::new(&piecewise.unwrap(), &m, &t, &d, Sides::Both).unwrap();
+        let spectral = CutTail::new(&waves.unwrap(), &m, &t, &d, CutSide::Both).unwrap();
+        let found = spectral.evaluate(18, &Effort::default()).unwrap().interval;
+        prop_assert!(found.has_relative_digits(18));
+        // The kernel route declines what would cost it too much.
+        if let Ok(other) = kernel.evaluate(18, &Effort::default()) {
+            prop_assert!(found.intersection(&other.interval).is_some(), "{found:?} {other:?}");
+        }
+        Ok(())
+    });
+    result.unwrap();
 }
 
 /// The spline in closed form, at rest.
