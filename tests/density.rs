@@ -83,7 +83,7 @@ fn values_computed_elsewhere() {
         let found = known(&a, &m, &t, &x, 36, false);
         let middle = read(value["value"].as_str().unwrap());
         let digits = value["digits_agreed_by_two_methods"].as_u64().unwrap();
-        let slack = (&middle * read(&format!("1e-{}", digits - 1)));
+        let slack = &middle * read(&format!("1e-{}", digits - 1));
         let range = (Rational::from(&middle - &slack), Rational::from(&middle + &slack));
         assert!(meets(&found.density, &range), "{value}: {found:?}");
     }
@@ -166,7 +166,7 @@ proptest! {
         // Anywhere up to two and a half times the cone, or beside an edge's light cone.
         let mut x = Rational::from(&a + &t) * Rational::from_f64(place).unwrap();
         if let Some((power, outer, left)) = beside {
-            let gap = (&t * Rational::from_f64(10f64.powf(power)).unwrap());
+            let gap = &t * Rational::from_f64(10f64.powf(power)).unwrap();
             x = if outer { Rational::from(&a + &t) } else { Rational::from(&t - &a) };
             if left { x -= gap } else { x += gap }
         }
