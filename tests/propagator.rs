@@ -159,7 +159,7 @@ proptest! {
         which in 0usize..3, mass in fraction(-3.0, 1.5), t in fraction(-2.0, 2.0), s in position(), unit in fraction(-3.0, 3.0)
     ) {
         let dimension = DIMENSIONS[which];
-        let x = (&t * (Rational::from_f64(s).unwrap() + 1u32));
+        let x = &t * (Rational::from_f64(s).unwrap() + 1u32);
         prop_assume!(x != t && Rational::from(&mass * &x) < 3000u32);
         let coarse = value(dimension, &mass, &t, &x, 10);
         let fine = value(dimension, &mass, &t, &x, 40);
