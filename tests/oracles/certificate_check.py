@@ -22,7 +22,12 @@ from pathlib import Path
 DECIMAL = re.compile(r"[0-9]+(\.[0-9]+)?(e-?[0-9]+)?\Z")
 MEMBERS = {"format", "format_version", "program", "program_version", "quantity", "inputs", "lower", "upper", "value",
            "digits", "status", "routes", "notes", "caution", "sha256"}
-INPUTS = {"packet", "half_width", "mass", "time", "beyond", "side", "digits", "route"}
+# What every request has, and what each kind of packet adds; the value is what may be missing.
+INPUTS = {"packet", "mass", "beyond", "side", "digits"}
+OPTIONAL = {"time", "over", "route", "max_bits", "time_limit"}
+PARAMETERS = {"box": ({"half_width"}, {"momentum", "rapidity", "boost_velocity"}),
+              "cosine": ({"half_width"}, {"mode", "momentum"}), "bspline": ({"half_width", "order"}, {"momentum"}),
+              "ball": ({"radius"}, set()), "well": ({"radius"}, {"mode"}), "gaussian": ({"sigma"}, {"momentum"})}
 ROUTE = {"name", "method", "lower", "upper", "bits", "nodes", "note", "witness"}
 REQUESTS = ["--half-width 1 --time 1", "--half-width 1/3 --mass 0 --time -2.5 --side left",
             "--half-width 1 --time 1 --beyond 115133", "--half-width 1 --time 0 --route kernel",
@@ -72,10 +77,16 @@ def demand(holds, what):
 def check(text):
     """Raises ValueError with the first thing that is wrong."""
     document = json.loads(text, object_pairs_hook=unique, parse_float=no_fraction)
-    demand(isinstance(document, dict) and set(document) == MEMBERS, "members")
+    demand(isinstance(document, dict) and set(document) - {"at"} == MEMBERS, "members")
     demand(document["format"] == "coneproof-certificate" and document["format_version"] == 1, "format")
     inputs = document["inputs"]
-    demand(INPUTS <= set(inputs) <= INPUTS | {"max_bits", "time_limit"}, "members of inputs")
+    demand(inputs.get("packet") in PARAMETERS, "packet")
+    needed, possible = PARAMETERS[inputs["packet"]]
+    demand(INPUTS | needed <= set(inputs) <= INPUTS | OPTIONAL | needed | possible, "members of inputs")
+    # An extremum is over a parameter and says where it is taken; everything else has a time.
+    demand(("over" in inputs) == ("at" in document) and ("over" in inputs) != ("time" in inputs), "time, over and at")
+    if "at" in document:
+        ends(document["at"])
     content = {name: value for name, value in document.items() if name != "sha256"}
     canonical = json.dumps(content, sort_keys=True, separators=(",", ":"), ensure_ascii=False)
     demand(hashlib.sha256(canonical.encode("utf-8")).hexdigest() == document["sha256"], "hash")
