@@ -214,7 +214,7 @@ impl Findings {
                 }
             };
             last = Findings::default();
-            let digits = certificate.digits + extra;
+            let digits = goal_digits(certificate, extra);
             let undecided = last.bounds("", &certificate.lower, &certificate.upper, &result.interval, digits);
             let undecided_at = last.place(certificate.at.as_ref(), result.at.as_ref(), digits);
             if certificate.at.is_some() {
@@ -330,11 +330,19 @@ fn prefix(route: &RouteCertificate) -> String {
     format!("routes[{}].", route.name)
 }
 
+/// Digits for a new computation: more than stated, unless that is more than can be asked for.
+fn goal_digits(certificate: &Certificate, extra: u32) -> u32 {
+    let inputs = &certificate.inputs;
+    let most = if inputs.get("over").is_some() { peak::MAX_DIGITS } else { MAX_DIGITS };
+    // A certificate that states more digits than were asked is wrong already and must not cost hours.
+    let asked = inputs.get("digits").and_then(|text| text.parse::<u32>().ok()).unwrap_or(most);
+    certificate.digits.min(asked).saturating_add(extra).min(most)
+}
+
 /// The inputs with a goal of their own: more digits, every route, no limits but the usual ones.
 fn goal(certificate: &Certificate, extra: u32) -> Inputs {
     let stated = &certificate.inputs;
-    let most = if stated.get("over").is_some() { peak::MAX_DIGITS } else { MAX_DIGITS };
-    let digits = certificate.digits.saturating_add(extra).min(most);
+    let digits = goal_digits(certificate, extra);
     let mut inputs = stated.clone().without("time_limit").without("max_bits").with("digits", digits.to_string());
     if stated.get("route").is_some() {
         inputs.set("route", "both");

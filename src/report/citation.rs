@@ -10,6 +10,7 @@ use crate::certificate::Certificate;
 use crate::error::Error;
 use crate::quantities::question::Inputs;
 use crate::quantities::restore;
+use crate::quantities::tail::MAX_DIGITS;
 use rug::Float;
 use serde::Serialize;
 
@@ -49,16 +50,17 @@ impl Citation {
         }
         let (lower, upper, sha256) = (&certificate.lower, &certificate.upper, &certificate.sha256);
         // Who asks for more than is certified gets what is certified.
-        let certified = certificate.digits.max(1);
-        let number = number(lower, upper, digits.map_or(certified, |digits| digits.min(certified)));
+        let limit = digits.map_or(certificate.digits, |digits| digits.min(certificate.digits)).min(MAX_DIGITS);
+        let number = number(lower, upper, limit);
         let inputs = described(&certificate.inputs);
         let (words, formula) = (question.words(), question.formula());
         let program = format!("{} {}", certificate.program, certificate.program_version);
         let interval = format!("[{lower}, {upper}]");
+        let subject = subject(&words);
         let stated = number.as_ref().map_or(String::new(), |number| format!(" is {number} and"));
         Ok(Citation {
             sentence: format!(
-                "{words}, for {inputs} (hbar = c = 1):{stated} lies in {interval} \
+                "The {subject}, for {inputs}, in units with hbar = c = 1,{stated} lies in {interval} \
                  (certified by {program}, certificate SHA-256 {sha256})."
             ),
             latex: latex(number.as_deref(), &formula, lower, upper, &inputs),
@@ -96,14 +98,27 @@ impl Citation {
     }
 }
 
+/// The quantity in words as part of a sentence, its formula in brackets.
+fn subject(words: &str) -> String {
+    let mut characters = words.chars();
+    let lower_case: String = characters.next().into_iter().flat_map(char::to_lowercase).chain(characters).collect();
+    match lower_case.split_once(": ") {
+        Some((words, formula)) => format!("{words} ({formula})"),
+        None => lower_case,
+    }
+}
+
 /// The number with at most `digits` digits.
 fn number(lower: &str, upper: &str, digits: u32) -> Option<String> {
     let length = u32::try_from(lower.len().max(upper.len())).ok()?;
     let bits = length.saturating_mul(4).saturating_add(128);
     let low = rounding::down(bits, Float::parse(lower).ok()?);
     let high = rounding::up(bits, Float::parse(upper).ok()?);
-    decimal::rounded(&Interval::new(low.clone(), high.clone()), digits)
-        .or_else(|| decimal::guaranteed_decimal(&Interval::new(low, high), digits).map(|found| found.text))
+    let interval = Interval::new(low, high);
+    // What is stated is not taken on trust: the bounds themselves have to have the digits.
+    let digits = interval.relative_digits(digits).max(1);
+    decimal::rounded(&interval, digits)
+        .or_else(|| decimal::guaranteed_decimal(&interval, digits).map(|found| found.text))
 }
 
 /// The inputs that matter for the value, in words.
