@@ -70,7 +70,7 @@ Examples:
   coneproof tail box --help
   coneproof peak box --half-width 1/2 --over time
   coneproof check claims.toml
-  coneproof recheck results/*.json
+  coneproof recheck tail.json
   coneproof cite tail.json
   coneproof schema certificate
 
