@@ -84,6 +84,16 @@ pub fn guaranteed_decimal(interval: &Interval, limit: u32) -> Option<GuaranteedD
     (1..=start).rev().take(4).find_map(|digits| try_digits(interval, digits))
 }
 
+/// The decimal of `digits` significant digits nearest to **every** point of the interval; `None` if its ends round to
+/// different decimals.
+pub fn rounded(interval: &Interval, digits: u32) -> Option<String> {
+    let nearest =
+        |value: &Float| (value.is_finite() && !value.is_zero()).then(|| directed(value, digits, Round::Nearest));
+    // Rounding is monotone, so what both ends round to is what all between them do.
+    let (low, high) = (nearest(interval.lower())?, nearest(interval.upper())?);
+    (low == high).then_some(low)
+}
+
 fn try_digits(interval: &Interval, digits: u32) -> Option<GuaranteedDecimal> {
     let bits = interval.lower().prec().max(interval.upper().prec()) + 8;
     let middle = Float::with_val_round(bits, interval.lower() + interval.upper(), Round::Nearest).0 >> 1u32;

@@ -16,6 +16,7 @@
 //! * [`interval`]: the directed lower/upper view used for input and output.
 //! * [`exact`]: decimals, fractions and intervals read without any rounding.
 //! * [`decimal`]: decimals printed with outward rounding, and the guaranteed-digits form.
+//! * [`written`]: statements about decimals as they are written, decided exactly.
 
 pub mod complex;
 pub mod convolution;
@@ -25,6 +26,7 @@ pub mod interval;
 pub mod magnitude;
 pub mod real;
 pub mod rounding;
+pub mod written;
 
 pub use complex::Complex;
 pub use exact::ExactInput;

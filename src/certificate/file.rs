@@ -42,11 +42,16 @@ impl Certificate {
     /// # Errors
     /// [`Error::File`] if the file cannot be read, otherwise as for [`Certificate::from_json`].
     pub fn read(path: &Path) -> Result<Certificate, Error> {
-        let mut text = String::new();
-        let reading = fs::File::open(path).and_then(|file| file.take(MAX_BYTES).read_to_string(&mut text));
-        reading.map_err(|error| failure("read", path, &error))?;
-        Certificate::from_json(&text)
+        Certificate::from_json(&text(path)?)
     }
+}
+
+/// The text of a file that should hold a certificate.
+pub(super) fn text(path: &Path) -> Result<String, Error> {
+    let mut text = String::new();
+    let reading = fs::File::open(path).and_then(|file| file.take(MAX_BYTES).read_to_string(&mut text));
+    reading.map_err(|error| failure("read", path, &error))?;
+    Ok(text)
 }
 
 /// Where the file will be: a link is followed, and only ordinary files are replaced.

@@ -17,10 +17,12 @@ macro_rules! exit_codes {
 }
 
 mod check;
+mod cite;
 mod density;
 mod fields;
 mod peak;
 mod propagator;
+mod recheck;
 mod schema;
 mod tail;
 mod usage;
@@ -53,6 +55,10 @@ enum Task {
     Propagator(propagator::PropagatorCommand),
     /// Judge the claims of files: upheld, refuted or open
     Check(check::CheckCommand),
+    /// Compute certificates again, trusting nothing in them: confirmed or not
+    Recheck(recheck::RecheckCommand),
+    /// Cite a certificate: sentence, number, LaTeX, BibTeX, Markdown, interval
+    Cite(cite::CiteCommand),
     /// Print the JSON Schema of something that this program writes
     Schema(schema::SchemaCommand),
 }
@@ -64,6 +70,8 @@ Examples:
   coneproof tail box --help
   coneproof peak box --half-width 1/2 --over time
   coneproof check claims.toml
+  coneproof recheck tail.json
+  coneproof cite tail.json
   coneproof schema certificate
 
 ",
@@ -123,6 +131,8 @@ impl Task {
             Task::Density(density) => density.answer(),
             Task::Propagator(propagator) => propagator.answer(),
             Task::Check(check) => check.answer(),
+            Task::Recheck(recheck) => recheck.answer(),
+            Task::Cite(cite) => cite.answer(),
             Task::Schema(schema) => Ok(schema.answer()),
         }
     }

@@ -8,6 +8,7 @@
 //! * `gaussian_tail`: what the gaussian packet says to that.
 //! * [`boosted_tail`]: the box as a moving observer finds it.
 //! * [`peak`]: the largest tail over all times.
+//! * [`restore`]: from the inputs of a certificate back to its question.
 //! * [`density`]: `|psi(x, t)|^2` and the amplitude at points, inside and outside the light cone.
 //! * [`propagator`]: the complex propagator `G(x, t)` in one, two and three dimensions.
 
@@ -21,5 +22,6 @@ pub mod peak;
 pub mod pointwise;
 pub mod propagator;
 pub mod question;
+pub mod restore;
 pub mod tail;
 mod tail_range;

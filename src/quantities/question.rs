@@ -63,6 +63,12 @@ impl Inputs {
         }
     }
 
+    /// The inputs without one of them.
+    pub fn without(mut self, name: &str) -> Inputs {
+        self.list.retain(|(known, _)| known != name);
+        self
+    }
+
     /// The text of one input.
     pub fn get(&self, name: &str) -> Option<&str> {
         self.list.iter().find(|(known, _)| known == name).map(|(_, text)| text.as_str())

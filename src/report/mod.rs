@@ -4,9 +4,11 @@
 //! bounds are rounded outward, and get as many digits as are needed for the decimal interval
 //! itself to satisfy `upper - lower <= 10^-digits * lower`. Certificates use the same strings.
 
+pub mod citation;
 pub mod claims;
 pub mod json;
 pub mod points;
+pub mod recheck;
 pub mod text;
 
 use crate::arithmetic::{Interval, decimal, rounding};
