@@ -178,7 +178,8 @@ fn changed_inputs_are_found_by_the_computation() {
 fn other_statements_are_checked_and_named() {
     let document = certificate(KINDS[0]);
     let value = document.value.clone().unwrap();
-    let changes: [(&str, Box<dyn Fn(&mut Certificate)>); 9] = [
+    type Change = Box<dyn Fn(&mut Certificate)>;
+    let changes: [(&str, Change); 9] = [
         ("value", Box::new(|c| c.value = Some(bumped(&bumped(&value, 14), 14)))),
         ("value", Box::new(|c| c.value = None)),
         ("digits", Box::new(|c| c.digits = 16)),
@@ -283,7 +284,7 @@ fn citations_never_say_more_than_is_certified() {
             let narrow = (digits as u32) + 3 < document.digits;
             let allowed = if narrow { unit / 2 } else { unit };
             for bound in [&lower, &upper] {
-                assert!(Rational::from(bound - read(number)).abs() <= allowed, "{kind} {digits}: {number}");
+                assert!((bound - read(number)).abs() <= allowed, "{kind} {digits}: {number}");
             }
             for form in ["sentence", "latex", "markdown"] {
                 assert!(cited[form].as_str().unwrap().contains(number), "{form}");
