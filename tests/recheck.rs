@@ -178,7 +178,7 @@ fn changed_inputs_are_found_by_the_computation() {
 fn other_statements_are_checked_and_named() {
     let document = certificate(KINDS[0]);
     let value = document.value.clone().unwrap();
-    type Change = Box<dyn Fn(&mut Certificate)>;
+    type Change<'a> = Box<dyn Fn(&mut Certificate) + 'a>;
     let changes: [(&str, Change); 9] = [
         ("value", Box::new(|c| c.value = Some(bumped(&bumped(&value, 14), 14)))),
         ("value", Box::new(|c| c.value = None)),
