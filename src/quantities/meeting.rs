@@ -7,7 +7,7 @@
 use crate::arithmetic::{Bits, Interval, decimal};
 use crate::error::Error;
 use crate::routes::{Effort, Evaluation, RouteFailure, RouteOutcome};
-use rayon::prelude::*;
+use std::thread;
 use std::time::{Duration, Instant};
 
 /// From this many digits on, routes are worth a thread each.
@@ -70,14 +70,12 @@ pub(super) fn meet(
     digits: u32,
     effort: &Effort,
 ) -> Result<(Option<Interval>, Vec<RouteReport>), Error> {
-    let reports: Vec<RouteReport> = if effort.deadline.is_none() && digits >= PARALLEL_FROM && routes.len() > 1 {
-        routes.par_iter().map(|route| drive(*route, digits, effort)).collect()
+    // Under a time limit the routes run side by side, so that a slow one takes no time from the others.
+    let side_by_side = routes.len() > 1 && (effort.deadline.is_some() || digits >= PARALLEL_FROM);
+    let reports: Vec<RouteReport> = if side_by_side {
+        in_threads(routes, digits, effort)?
     } else {
-        let one = |(index, route): (usize, &&dyn Evaluation)| {
-            let share = effort.deadline.map(|deadline| share_of_time(deadline, routes.len() - index));
-            drive(*route, digits, &Effort { deadline: share, ..*effort })
-        };
-        routes.iter().enumerate().map(one).collect()
+        routes.iter().map(|route| drive(*route, digits, effort)).collect()
     };
     let mut meeting: Option<Interval> = None;
     for interval in reports.iter().filter_map(|report| report.interval.as_ref()) {
@@ -89,11 +87,13 @@ pub(super) fn meet(
     Ok((meeting, reports))
 }
 
-/// The moment at which the next one of several routes has to stop, so that each gets its share.
-fn share_of_time(deadline: Instant, routes: usize) -> Instant {
-    let left = deadline.saturating_duration_since(Instant::now());
-    let share = u32::try_from(routes).map_or(left, |routes| left / routes.max(1));
-    deadline.checked_sub(left - share).unwrap_or(deadline)
+/// Drives every route in a thread of its own.
+fn in_threads(routes: &[&dyn Evaluation], digits: u32, effort: &Effort) -> Result<Vec<RouteReport>, Error> {
+    thread::scope(|scope| {
+        let threads: Vec<_> = routes.iter().map(|route| scope.spawn(|| drive(*route, digits, effort))).collect();
+        let joined = threads.into_iter().map(|thread| thread.join());
+        joined.map(|report| report.map_err(|_| Error::Internal { found: "a route panicked".to_owned() })).collect()
+    })
 }
 
 fn disagreement(reports: &[RouteReport]) -> Error {
