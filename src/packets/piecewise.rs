@@ -28,47 +28,7 @@ pub const MAX_ORDER: u32 = 32;
 /// Largest mode number of a cosine packet.
 pub const MAX_MODE: u32 = 1_000_000;
 
-/// A complex number with exact rational parts.
-#[derive(Clone, Debug, Default, PartialEq, Eq)]
-pub struct ExactComplex {
-    /// Real part.
-    pub re: Rational,
-    /// Imaginary part.
-    pub im: Rational,
-}
-
-impl ExactComplex {
-    /// From both parts.
-    pub fn new(re: Rational, im: Rational) -> ExactComplex {
-        ExactComplex { re, im }
-    }
-
-    /// Whether this is exactly zero.
-    pub fn is_zero(&self) -> bool {
-        self.re == 0 && self.im == 0
-    }
-
-    /// Sum.
-    pub fn plus(&self, other: &ExactComplex) -> ExactComplex {
-        ExactComplex::new(Rational::from(&self.re + &other.re), Rational::from(&self.im + &other.im))
-    }
-
-    /// Product with a rational.
-    pub fn times(&self, factor: &Rational) -> ExactComplex {
-        ExactComplex::new(Rational::from(&self.re * factor), Rational::from(&self.im * factor))
-    }
-
-    /// Complex conjugate.
-    pub fn conj(&self) -> ExactComplex {
-        ExactComplex::new(self.re.clone(), Rational::from(-&self.im))
-    }
-}
-
-impl From<Rational> for ExactComplex {
-    fn from(re: Rational) -> ExactComplex {
-        ExactComplex::new(re, Rational::new())
-    }
-}
+pub use super::waves::ExactComplex;
 
 /// A factor in front of the polynomials.
 #[derive(Clone, Debug, PartialEq, Eq)]

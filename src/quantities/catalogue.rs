@@ -7,12 +7,13 @@ use super::packet_tail::{ExactTail, TailPacket};
 use super::tail::Side;
 use crate::arithmetic::ExactInput;
 use crate::error::Error;
-use crate::packets::{GaussianPacket, PiecewisePacket, WavePacket};
+use crate::packets::{BSplinePacket, GaussianPacket, PiecewisePacket, WavePacket};
 use crate::routes::Evaluation;
-use crate::routes::cut::{CutSide, CutTail};
+use crate::routes::cut::{CutAmplitude, CutSide, CutTail};
 use crate::routes::panels::{PiecewiseKernel, Sides};
 use rug::Rational;
 use std::collections::BTreeMap;
+use std::fmt;
 
 /// A kind of packet: its name, its parameters (those after the first `needed` may be left out), its constructor.
 struct Kind {
@@ -98,15 +99,20 @@ fn report_name(name: &'static str) -> &'static str {
 }
 
 /// A compact packet with its two views.
-#[derive(Debug)]
 struct Compact {
     kind: &'static str,
     parameters: Vec<(&'static str, String)>,
     edge: Rational,
     radial: bool,
-    waves: WavePacket,
+    waves: Box<dyn CutAmplitude>,
     /// The view of the kernel route, where it has one.
     pieces: Option<PiecewisePacket>,
+}
+
+impl fmt::Debug for Compact {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        f.debug_struct(self.kind).field("parameters", &self.parameters).finish()
+    }
 }
 
 impl TailPacket for Compact {
@@ -137,7 +143,7 @@ impl TailPacket for Compact {
         if let Some(pieces) = self.pieces.as_ref().filter(|_| *mass > 0) {
             list.push(Box::new(PiecewiseKernel::new(pieces, mass, time, distance, panels)?));
         }
-        list.push(Box::new(CutTail::new(&self.waves, mass, time, distance, cut)?));
+        list.push(Box::new(CutTail::new(self.waves.as_ref(), mass, time, distance, cut)?));
         Ok(list)
     }
 }
@@ -148,7 +154,7 @@ fn moving_box(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
         kind: "box",
         parameters: given.shown(&["half-width", "momentum"]),
         radial: false,
-        waves: WavePacket::moving_box(&half_width, &momentum)?,
+        waves: Box::new(WavePacket::moving_box(&half_width, &momentum)?),
         pieces: Some(PiecewisePacket::uniform(&half_width)?.with_momentum(&momentum)?),
         edge: half_width,
     }))
@@ -163,7 +169,7 @@ fn cosine(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
         kind: "cosine",
         parameters: given.shown(&["half-width", "mode", "momentum"]),
         radial: false,
-        waves: WavePacket::cosine(&half_width, mode, &momentum)?,
+        waves: Box::new(WavePacket::cosine(&half_width, mode, &momentum)?),
         pieces,
         edge: half_width,
     }))
@@ -172,11 +178,17 @@ fn cosine(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
 fn bspline(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
     let (half_width, order) = (given.number("half-width", "1")?, given.whole("order", "1", 20)?);
     let momentum = given.number("momentum", "0")?;
+    // At rest the transform is a power of one sinc, which is cheaper than a sum over knots.
+    let waves: Box<dyn CutAmplitude> = if momentum == 0 {
+        Box::new(BSplinePacket::new(&half_width, order)?)
+    } else {
+        Box::new(WavePacket::bspline(&half_width, order, &momentum)?)
+    };
     Ok(Box::new(Compact {
         kind: "bspline",
         parameters: given.shown(&["half-width", "order", "momentum"]),
         radial: false,
-        waves: WavePacket::bspline(&half_width, order, &momentum)?,
+        waves,
         pieces: Some(PiecewisePacket::bspline(&half_width, order)?.with_momentum(&momentum)?),
         edge: half_width,
     }))
@@ -188,7 +200,7 @@ fn ball(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
         kind: "ball",
         parameters: given.shown(&["radius"]),
         radial: true,
-        waves: WavePacket::ball(&radius)?,
+        waves: Box::new(WavePacket::ball(&radius)?),
         pieces: Some(PiecewisePacket::uniform_ball(&radius)?),
         edge: radius,
     }))
@@ -200,7 +212,7 @@ fn well(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
         kind: "well",
         parameters: given.shown(&["radius", "mode"]),
         radial: true,
-        waves: WavePacket::spherical_well(&radius, mode)?,
+        waves: Box::new(WavePacket::spherical_well(&radius, mode)?),
         pieces: None,
         edge: radius,
     }))
