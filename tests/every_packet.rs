@@ -75,6 +75,19 @@ fn the_box_by_other_names() {
     assert!(plain.intersection(&spline).and_then(|both| both.intersection(&still)).is_some());
 }
 
+/// A triangle by pieces is the spline of order two, wherever it stands; two half boxes are a box; a common phase is nothing.
+#[test]
+fn pieces_of_other_packets() {
+    let pieces =
+        |knots: &str, pieces: &str| certified(&request("piecewise", &[("knots", knots), ("pieces", pieces)], "1", "1"));
+    let spline = certified(&request("bspline", &[("half-width", "1"), ("order", "2")], "1", "1"));
+    assert!(spline.intersection(&pieces("-1, 0, 1", "0, 1; 1, -1")).is_some());
+    assert!(spline.intersection(&pieces("4, 5, 6", "0, 2i; 2i, -2i")).is_some());
+    let plain = certified(&request("box", &[("half-width", "1")], "1", "1"));
+    assert!(plain.intersection(&pieces("-1, 1/3, 1", "3; 3")).is_some());
+    assert!(plain.intersection(&pieces("-1, 1/3, 1", "3; 2")).is_none());
+}
+
 /// Both sides of a moving box have the same tail (an exact identity: outside the cone the kernel is imaginary and even).
 #[test]
 fn a_moving_box_leaks_alike_on_both_sides() {

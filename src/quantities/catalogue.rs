@@ -4,6 +4,7 @@
 //! routes are new, a folder in [`crate::routes`].
 
 use super::packet_tail::{ExactTail, TailPacket};
+use super::piecewise_text;
 use super::tail::Side;
 use crate::arithmetic::ExactInput;
 use crate::error::Error;
@@ -23,12 +24,13 @@ struct Kind {
     build: fn(&Parameters) -> Result<Box<dyn TailPacket>, Error>,
 }
 
-const KINDS: [Kind; 6] = [
+const KINDS: [Kind; 7] = [
     Kind { name: "box", parameters: &["half-width", "momentum"], needed: 1, build: moving_box },
     Kind { name: "cosine", parameters: &["half-width", "mode", "momentum"], needed: 1, build: cosine },
     Kind { name: "bspline", parameters: &["half-width", "order", "momentum"], needed: 2, build: bspline },
     Kind { name: "ball", parameters: &["radius"], needed: 1, build: ball },
     Kind { name: "well", parameters: &["radius", "mode"], needed: 1, build: well },
+    Kind { name: "piecewise", parameters: &["knots", "pieces"], needed: 2, build: piecewise },
     Kind { name: "gaussian", parameters: &["sigma", "momentum"], needed: 1, build: gaussian },
 ];
 
@@ -107,6 +109,7 @@ struct Compact {
     waves: Box<dyn CutAmplitude>,
     /// The view of the kernel route, where it has one.
     pieces: Option<PiecewisePacket>,
+    remarks: Vec<String>,
 }
 
 impl fmt::Debug for Compact {
@@ -130,6 +133,10 @@ impl TailPacket for Compact {
 
     fn is_radial(&self) -> bool {
         self.radial
+    }
+
+    fn remarks(&self) -> Vec<String> {
+        self.remarks.clone()
     }
 
     fn routes(&self, problem: &ExactTail) -> Result<Vec<Box<dyn Evaluation>>, Error> {
@@ -157,6 +164,7 @@ fn moving_box(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
         waves: Box::new(WavePacket::moving_box(&half_width, &momentum)?),
         pieces: Some(PiecewisePacket::uniform(&half_width)?.with_momentum(&momentum)?),
         edge: half_width,
+        remarks: Vec::new(),
     }))
 }
 
@@ -172,6 +180,7 @@ fn cosine(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
         waves: Box::new(WavePacket::cosine(&half_width, mode, &momentum)?),
         pieces,
         edge: half_width,
+        remarks: Vec::new(),
     }))
 }
 
@@ -191,6 +200,26 @@ fn bspline(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
         waves,
         pieces: Some(PiecewisePacket::bspline(&half_width, order)?.with_momentum(&momentum)?),
         edge: half_width,
+        remarks: Vec::new(),
+    }))
+}
+
+fn piecewise(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
+    let (knots, coefficients) = piecewise_text::read(given.text("knots", ""), given.text("pieces", ""))?;
+    let pieces = PiecewisePacket::complex(knots.clone(), coefficients.clone())?;
+    let remarks = vec![format!(
+        "the packet was normalised: the integral of its absolute square was {}; distances count from {}",
+        super::tail::readable(pieces.norm_squared()),
+        super::tail::readable(&pieces.centre())
+    )];
+    Ok(Box::new(Compact {
+        kind: "piecewise",
+        parameters: given.shown(&["knots", "pieces"]),
+        radial: false,
+        waves: Box::new(WavePacket::piecewise(knots, &coefficients)?),
+        edge: pieces.half_width(),
+        pieces: Some(pieces),
+        remarks,
     }))
 }
 
@@ -203,6 +232,7 @@ fn ball(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
         waves: Box::new(WavePacket::ball(&radius)?),
         pieces: Some(PiecewisePacket::uniform_ball(&radius)?),
         edge: radius,
+        remarks: Vec::new(),
     }))
 }
 
@@ -215,6 +245,7 @@ fn well(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
         waves: Box::new(WavePacket::spherical_well(&radius, mode)?),
         pieces: None,
         edge: radius,
+        remarks: Vec::new(),
     }))
 }
 

@@ -19,6 +19,7 @@ mod gaussian_tail;
 pub mod meeting;
 pub mod packet_tail;
 pub mod peak;
+mod piecewise_text;
 pub mod pointwise;
 pub mod propagator;
 pub mod question;

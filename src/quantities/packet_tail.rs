@@ -47,6 +47,11 @@ pub trait TailPacket: Send + Sync + fmt::Debug {
         false
     }
 
+    /// What a reader should know of the packet, such as the norm that was found.
+    fn remarks(&self) -> Vec<String> {
+        Vec::new()
+    }
+
     /// The routes that know this problem.
     ///
     /// # Errors
@@ -147,7 +152,7 @@ impl PacketTail {
     }
 
     fn notes(&self, routes: &[RouteReport], at_rest: bool) -> Vec<String> {
-        let mut notes = Vec::new();
+        let mut notes = self.packet.remarks();
         if at_rest {
             notes.push("at time zero the packet has not left its support: the probability is exactly zero".to_owned());
         } else if routes.iter().all(|route| route.interval.is_none()) {

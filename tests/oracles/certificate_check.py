@@ -27,7 +27,8 @@ INPUTS = {"packet", "mass", "beyond", "side", "digits"}
 OPTIONAL = {"time", "over", "route", "max_bits", "time_limit"}
 PARAMETERS = {"box": ({"half_width"}, {"momentum", "rapidity", "boost_velocity"}),
               "cosine": ({"half_width"}, {"mode", "momentum"}), "bspline": ({"half_width", "order"}, {"momentum"}),
-              "ball": ({"radius"}, set()), "well": ({"radius"}, {"mode"}), "gaussian": ({"sigma"}, {"momentum"})}
+              "piecewise": ({"knots", "pieces"}, set()), "ball": ({"radius"}, set()),
+              "well": ({"radius"}, {"mode"}), "gaussian": ({"sigma"}, {"momentum"})}
 ROUTE = {"name", "method", "lower", "upper", "bits", "nodes", "note", "witness"}
 REQUESTS = ["--half-width 1 --time 1", "--half-width 1/3 --mass 0 --time -2.5 --side left",
             "--half-width 1 --time 1 --beyond 115133", "--half-width 1 --time 0 --route kernel",

@@ -44,6 +44,8 @@ enum PacketCommand {
     Cosine(packets::CosineArguments),
     /// B-spline on |x| <= half-width
     Bspline(packets::BsplineArguments),
+    /// Piecewise polynomial between knots, real or complex
+    Piecewise(packets::PiecewiseArguments),
     /// Uniform in a ball, three dimensions
     Ball(packets::BallArguments),
     /// Eigenstate of a spherical well, s-wave, three dimensions
@@ -144,6 +146,7 @@ impl TailCommand {
             PacketCommand::Box(arguments) => arguments.answer(),
             PacketCommand::Cosine(arguments) => arguments.answer(),
             PacketCommand::Bspline(arguments) => arguments.answer(),
+            PacketCommand::Piecewise(arguments) => arguments.answer(),
             PacketCommand::Ball(arguments) => arguments.answer(),
             PacketCommand::Well(arguments) => arguments.answer(),
             PacketCommand::Gaussian(arguments) => arguments.answer(),

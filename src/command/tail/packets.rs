@@ -4,7 +4,10 @@ use super::{Answer, TailArguments};
 use crate::error::Error;
 use crate::quantities::catalogue;
 use clap::Args;
+use serde::Deserialize;
 use std::collections::BTreeMap;
+use std::fs;
+use std::path::PathBuf;
 
 /// The parameters that were given, by the names of the command line.
 type Parameters = BTreeMap<String, String>;
@@ -81,6 +84,60 @@ impl BsplineArguments {
     pub(super) fn answer(&self) -> Result<Answer, Error> {
         let list = [("half-width", &self.half_width), ("order", &self.order), ("momentum", &self.momentum)];
         answer("bspline", &parameters(&list), &self.common)
+    }
+}
+
+const PIECEWISE_HELP: &str = concat!(
+    "\
+Between the knots x_i and x_(i+1) the amplitude is the sum of c_n (x - x_i)^n. Coefficients of a piece are separated by
+commas, pieces by semicolons; numbers are exact, also complex ones such as 1/2-3i. The packet is normalised, and
+distances count from the middle of its support. A file holds the same texts:
+
+  knots  = \"-1, 0, 1\"
+  pieces = \"0, 1; 1, -1\"
+
+Examples:
+  coneproof tail piecewise --knots \"-1, 0, 1\" --pieces \"0, 1; 1, -1\" --time 1
+  coneproof tail piecewise --file packet.toml --time 1
+
+",
+    exit_codes!()
+);
+
+/// `coneproof tail piecewise`.
+#[derive(Args)]
+#[command(after_help = PIECEWISE_HELP)]
+pub(super) struct PiecewiseArguments {
+    /// Places where the pieces meet, increasing
+    #[arg(long, value_name = "LIST", allow_hyphen_values = true, conflicts_with = "file")]
+    knots: Option<String>,
+    /// Coefficients of the pieces
+    #[arg(long, value_name = "LISTS", allow_hyphen_values = true, conflicts_with = "file")]
+    pieces: Option<String>,
+    /// TOML file with knots and pieces
+    #[arg(long, value_name = "FILE")]
+    file: Option<PathBuf>,
+    #[command(flatten)]
+    common: TailArguments,
+}
+
+/// A packet file.
+#[derive(Deserialize)]
+#[serde(deny_unknown_fields)]
+struct PacketFile {
+    knots: String,
+    pieces: String,
+}
+
+impl PiecewiseArguments {
+    pub(super) fn answer(&self) -> Result<Answer, Error> {
+        let Some(path) = &self.file else {
+            return answer("piecewise", &parameters(&[("knots", &self.knots), ("pieces", &self.pieces)]), &self.common);
+        };
+        let text = fs::read_to_string(path).map_err(|error| Error::file("read", path.display(), error))?;
+        let file: PacketFile = toml::from_str(&text).map_err(|error| Error::file("read", path.display(), error))?;
+        let list = [("knots", &Some(file.knots)), ("pieces", &Some(file.pieces))];
+        answer("piecewise", &parameters(&list), &self.common)
     }
 }
 
