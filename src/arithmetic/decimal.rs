@@ -236,7 +236,8 @@ mod tests {
                 };
                 proptest::prop_assert!((printed - inside).abs() < unit);
             } else {
-                proptest::prop_assert!(width <= 2, "no digit found for a narrow interval");
+                // An eighth of its value across a power of ten can leave no digit: 0.894 to 1.006.
+                proptest::prop_assert!(width <= 3, "no digit found for a narrow interval");
             }
         }
     }
