@@ -10,6 +10,7 @@
 //! Nothing passes through floating point. The text read is kept, so that a result can show the
 //! exact strings it rests on.
 
+use crate::error::Error;
 use rug::{Integer, Rational};
 use std::fmt;
 
@@ -52,6 +53,14 @@ pub struct ExactInput {
 }
 
 impl ExactInput {
+    /// Reads the text of a field of a request.
+    ///
+    /// # Errors
+    /// [`Error::BadInput`] naming the field, what it was and what would be right.
+    pub fn of_field(field: &str, text: &str) -> Result<ExactInput, Error> {
+        text.parse().map_err(|error: NotANumber| Error::bad_input(field, text, &error.wanted))
+    }
+
     /// The text it was read from, without surrounding blanks.
     pub fn text(&self) -> &str {
         &self.text

@@ -106,7 +106,7 @@ fn missing(field: &str, wanted: &str) -> Error {
 }
 
 fn number(field: &str, text: &str) -> Result<ExactInput, Error> {
-    text.parse().map_err(|error: crate::arithmetic::exact::NotANumber| Error::bad_input(field, text, &error.wanted))
+    ExactInput::of_field(field, text)
 }
 
 /// `beyond cone`, `beyond R`, `right of cone`, `left of R`.

@@ -22,7 +22,7 @@ pub(super) fn required(field: &str, text: Option<&str>, example: &str) -> Result
 
 /// A number, fraction or interval.
 pub(super) fn exact(field: &str, text: &str) -> Result<ExactInput, Error> {
-    text.parse().map_err(|error: crate::arithmetic::exact::NotANumber| Error::bad_input(field, text, &error.wanted))
+    ExactInput::of_field(field, text)
 }
 
 /// The distance `R`, or `None` for the light cone.

@@ -3,15 +3,13 @@
 //! The region is `|x| > R` at the observer's time `t'`: beyond the cones of the two edge events (`cone`, at `t' = 0` this
 //! is `a e^|theta|`), outside the contracted interval (`contracted`, `a / cosh(theta)`), or beyond any `R`.
 
-use super::meeting::meet;
 use super::question::{Inputs, Question};
-use super::tail::{DEFAULT_MAX_BITS, MAX_DIGITS, TailResult, as_probability, check_size};
-use crate::arithmetic::{Bits, ExactInput, Interval};
+use super::tail::{DEFAULT_MAX_BITS, MAX_DIGITS, TailResult, check_size, meet_probability};
+use crate::arithmetic::{Bits, ExactInput};
 use crate::error::Error;
 use crate::packets::{Boost, BoostedBox, BoxPacket};
 use crate::routes::boost::{BoostProblem, Complement, Contour, Cut, Region};
 use crate::routes::{Effort, Evaluation};
-use rug::Float;
 use std::time::{Duration, Instant};
 
 /// The region that counts.
@@ -152,11 +150,7 @@ impl Question for BoostedTail {
         let routes = self.routes(&problem)?;
         let deadline = self.time_limit.and_then(|limit| start.checked_add(limit));
         let effort = Effort { max_bits: Some(self.max_bits.unwrap_or(DEFAULT_MAX_BITS)), deadline };
-        let list: Vec<&dyn Evaluation> = routes.iter().map(AsRef::as_ref).collect();
-        let (meeting, mut reports) = meet(&list, self.digits, &effort)?;
-        for report in &mut reports {
-            report.interval = report.interval.as_ref().map(as_probability).transpose()?;
-        }
+        let (interval, reports) = meet_probability(&routes, self.digits, &effort)?;
         let answered: Vec<&str> = reports.iter().filter(|r| r.interval.is_some()).map(|r| r.name).collect();
         let mut notes = Vec::new();
         if answered.is_empty() {
@@ -168,8 +162,6 @@ impl Question for BoostedTail {
         } else if answered.len() == 1 && self.route == "both" {
             notes.push("only one route answered; nothing independent confirms the interval".to_owned());
         }
-        let unknown = || Interval::new(Float::new(64), Float::with_val(64, 1));
-        let interval = as_probability(&meeting.unwrap_or_else(unknown))?;
         Ok(TailResult::new(interval, self.digits, reports, notes, start))
     }
 }

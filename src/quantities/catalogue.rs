@@ -69,9 +69,7 @@ impl Parameters<'_> {
     /// A single exact number.
     fn number(&self, name: &str, default: &str) -> Result<Rational, Error> {
         let text = self.text(name, default);
-        let read: ExactInput = text
-            .parse()
-            .map_err(|error: crate::arithmetic::exact::NotANumber| Error::bad_input(name, text, &error.wanted))?;
+        let read = ExactInput::of_field(name, text)?;
         super::tail::check_size(name, &read)?;
         if !read.is_point() {
             return Err(Error::bad_input(name, text, "give a single number for this packet"));
@@ -252,8 +250,7 @@ fn well(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
 fn gaussian(given: &Parameters<'_>) -> Result<Box<dyn TailPacket>, Error> {
     let exact = |name: &str, default: &str| -> Result<ExactInput, Error> {
         given.number(name, default)?;
-        let text = given.text(name, default);
-        text.parse().map_err(|error: crate::arithmetic::exact::NotANumber| Error::bad_input(name, text, &error.wanted))
+        ExactInput::of_field(name, given.text(name, default))
     };
     Ok(Box::new(GaussianPacket::new(exact("sigma", "1")?)?.with_momentum(exact("momentum", "0")?)))
 }

@@ -4,10 +4,9 @@
 //! the meeting of the routes to the certificate, is the same for all. The box at rest has requests of its own
 //! ([`super::tail`]), which take intervals as inputs too.
 
-use super::meeting::meet;
 use super::question::{Inputs, Question};
 use super::tail::{
-    DEFAULT_MAX_BITS, MAX_DIGITS, RouteReport, Side, TailResult, as_probability, check_size, readable, region,
+    DEFAULT_MAX_BITS, MAX_DIGITS, RouteReport, Side, TailResult, check_size, meet_probability, readable, region,
 };
 use crate::arithmetic::{Bits, ExactInput, Interval};
 use crate::error::Error;
@@ -222,13 +221,7 @@ impl Question for PacketTail {
         }
         let deadline = self.time_limit.and_then(|limit| start.checked_add(limit));
         let effort = Effort { max_bits: Some(self.max_bits.unwrap_or(DEFAULT_MAX_BITS)), deadline };
-        let list: Vec<&dyn Evaluation> = routes.iter().map(AsRef::as_ref).collect();
-        let (meeting, mut reports) = meet(&list, self.digits, &effort)?;
-        for report in &mut reports {
-            report.interval = report.interval.as_ref().map(as_probability).transpose()?;
-        }
-        let unknown = || Interval::new(Float::new(64), Float::with_val(64, 1));
-        let interval = as_probability(&meeting.unwrap_or_else(unknown))?;
+        let (interval, reports) = meet_probability(&routes, self.digits, &effort)?;
         let notes = self.notes(&reports, false);
         Ok(TailResult::new(interval, self.digits, reports, notes, start))
     }

@@ -171,7 +171,7 @@ impl Reader<'_> {
 }
 
 fn exact(field: &str, text: &str) -> Result<ExactInput, Error> {
-    text.parse().map_err(|error: crate::arithmetic::exact::NotANumber| Error::bad_input(field, text, &error.wanted))
+    ExactInput::of_field(field, text)
 }
 
 /// Digits only: no sign, point or exponent.

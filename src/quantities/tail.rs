@@ -318,6 +318,21 @@ pub(super) fn as_probability(interval: &Interval) -> Result<Interval, Error> {
     interval.intersection(&unit).ok_or_else(|| Error::Internal { found: found() })
 }
 
+/// Runs routes to a probability: their meeting, which is all of `[0, 1]` if no route has bounds, and their reports.
+pub(super) fn meet_probability(
+    routes: &[Box<dyn Evaluation>],
+    digits: u32,
+    effort: &Effort,
+) -> Result<(Interval, Vec<RouteReport>), Error> {
+    let list: Vec<&dyn Evaluation> = routes.iter().map(AsRef::as_ref).collect();
+    let (meeting, mut reports) = meet(&list, digits, effort)?;
+    for report in &mut reports {
+        report.interval = report.interval.as_ref().map(as_probability).transpose()?;
+    }
+    let unknown = || Interval::new(Float::new(64), Float::with_val(64, 1));
+    Ok((as_probability(&meeting.unwrap_or_else(unknown))?, reports))
+}
+
 /// Exact half of an interval.
 fn halve(interval: &Interval) -> Interval {
     let (lower, upper) = (interval.lower(), interval.upper());
